@@ -1,0 +1,160 @@
+/**
+ * Learns the dual metric W(z) = w0 I + L(z) L(z)^T from a constant one, in rounds: train on a pool of states, let the
+ * judge (the verifier) rate the result and name the worst states, add these to the pool, go on. The best round judged
+ * is returned, the constant start included, so learning never ends worse than it began.
+ *
+ * Published method: counterexample-guided training of contraction metrics with a hinge on the violation; here the
+ * network's value and one tangent per direction f, b_1 .. b_m suffice (stateTerms.ts), and the contraction rate is
+ * trained with the weights unless it is given.
+ */
+import type { Engine } from "../engine/openEngine.js";
+import { initialMlp, trainableMlp } from "../engine/trainableMlp.js";
+import type { ControlAffineModel } from "../model/controlAffine.js";
+import type { DualMetricFile } from "../nets/dualMetric.js";
+import type { Feature } from "../nets/features.js";
+import { cholesky, symmetricEigen } from "../num/dense.js";
+import type { Random } from "../num/random.js";
+import type { BatchValue, ObjectiveSettings } from "./batchObjective.js";
+import { metricTrainer } from "./metricTrainer.js";
+import { packedSize } from "./packedFactor.js";
+import { type TrainingState, trainingState } from "./trainingState.js";
+
+export interface LearnSettings extends ObjectiveSettings {
+  readonly features: readonly Feature[];
+  readonly width: number;
+  /** Adam steps over all rounds together. */
+  readonly steps: number;
+  readonly rounds: number;
+  /** A given contraction rate, 1/s; null: trained, starting from `initialRate`. */
+  readonly rate: number | null;
+  readonly initialRate: number;
+  /** The constant metric to start from, n x n. */
+  readonly start: Float64Array;
+}
+
+/** The verifier's word on a metric: its asked margin (null when it gives none) and active states worth training on. */
+export interface Judgement {
+  readonly margin: number | null;
+  readonly worstStates: readonly Float64Array[];
+}
+
+export interface LearnStep extends Omit<BatchValue, "objective" | "rateSlope"> {
+  readonly round: number;
+  readonly step: number;
+  readonly rate: number;
+}
+
+export interface LearnedMetric {
+  readonly metric: DualMetricFile;
+  /** Rate that training ended at, 1/s. */
+  readonly rate: number;
+  readonly margin: number | null;
+  readonly bestRound: number;
+  readonly history: readonly LearnStep[];
+}
+
+export interface LearnServices {
+  readonly engine: Engine;
+  readonly random: Random;
+  /** `rate` is the rate reached in training. */
+  readonly judge: (metric: DualMetricFile, rate: number) => Judgement;
+  readonly progress: (done: number, total: number, note: string) => void;
+  readonly signal?: AbortSignal | undefined;
+}
+
+const POOL = 2048;
+const BATCH = 96;
+const HARD_IN_BATCH = 48;
+const HARD_KEPT = 256;
+const LEARNING_RATE = 4e-3;
+const RATE_LEARNING_RATE = 1e-2;
+
+export async function learnMetric(
+  model: ControlAffineModel,
+  corners: readonly Float64Array[],
+  settings: LearnSettings,
+  services: LearnServices,
+): Promise<LearnedMetric> {
+  const { n } = model;
+  const { engine, random, judge, progress } = services;
+  const { w0, L } = startFactor(settings.start, n);
+  const sizes = [settings.features.length, settings.width, settings.width, packedSize(n)];
+  const net = trainableMlp(engine.tf, biased(initialMlp(sizes, random.stream("weights"), 0.02), L, n));
+  const toFile = (): DualMetricFile => ({ kind: "network", n, w0, features: settings.features, mlp: net.toMlp() });
+  const draw = random.stream("states");
+  const pool = Array.from({ length: POOL }, () =>
+    trainingState(
+      model,
+      settings.features,
+      Float64Array.from(model.active, () => 2 * draw.uniform() - 1),
+    ),
+  );
+  const hard: TrainingState[] = [];
+  const pick = random.stream("batches");
+  const trainer = metricTrainer(engine, net, model, corners, w0, BATCH, settings);
+  const history: LearnStep[] = [];
+
+  let lambda = settings.rate ?? settings.initialRate;
+  let best: LearnedMetric | null = null;
+  const judgeRound = (round: number): void => {
+    const metric = toFile();
+    const { margin, worstStates } = judge(metric, lambda);
+    for (const active of worstStates) hard.push(trainingState(model, settings.features, active));
+    hard.splice(0, Math.max(0, hard.length - HARD_KEPT));
+    if (best === null || isBetter(margin, best.margin))
+      best = { metric, rate: lambda, margin, bestRound: round, history };
+  };
+  judgeRound(0);
+  const perRound = Math.ceil(settings.steps / settings.rounds);
+  const total = perRound * settings.rounds;
+  for (let round = 1; round <= settings.rounds; round++) {
+    for (let step = 0; step < perRound; step++) {
+      services.signal?.throwIfAborted();
+      const done = (round - 1) * perRound + step;
+      const hardCount = Math.min(hard.length, HARD_IN_BATCH);
+      const batch = [
+        ...Array.from({ length: BATCH - hardCount }, () => pool[pick.integer(POOL)]!),
+        ...Array.from({ length: hardCount }, () => hard[pick.integer(hard.length)]!),
+      ];
+      const decay = 0.5 * (1 + Math.cos((Math.PI * done) / total)) + 0.02;
+      const value = trainer.step(batch, lambda, LEARNING_RATE * decay);
+      if (done % 10 === 0) {
+        const { margin, authority, shortfall } = value;
+        history.push({ round, step: done, rate: lambda, margin, authority, shortfall });
+      }
+      if (settings.rate === null) lambda = trainer.stepRate(lambda, value.rateSlope, RATE_LEARNING_RATE * decay);
+      if (step % 25 === 0) {
+        progress(done, total, `round ${round} of ${settings.rounds}`);
+        await new Promise((resolve) => setImmediate(resolve));
+      }
+    }
+    judgeRound(round);
+  }
+  trainer.dispose();
+  return { ...best!, history };
+}
+
+function isBetter(margin: number | null, than: number | null): boolean {
+  return margin !== null && (than === null || margin < than);
+}
+
+/** W scaled to a unit mean diagonal, split as w0 I + L L^T with w0 a twentieth of its least eigenvalue. */
+function startFactor(start: Float64Array, n: number): { w0: number; L: Float64Array } {
+  let trace = 0;
+  for (let i = 0; i < n; i++) trace += start[i * n + i]!;
+  const W = start.map((value) => (value * n) / trace);
+  const values = new Float64Array(n);
+  symmetricEigen(W.slice(), n, values, null);
+  const w0 = values.reduce((a, b) => Math.min(a, b)) / 20;
+  for (let i = 0; i < n; i++) W[i * n + i]! -= w0;
+  const L = new Float64Array(n * n);
+  if (!cholesky(W, L, n)) throw new Error("the metric to start from is not positive definite; start from one that is");
+  return { w0, L };
+}
+
+/** The network with the bias of its last layer set to the packed rows of L. */
+function biased(mlp: ReturnType<typeof initialMlp>, L: Float64Array, n: number): ReturnType<typeof initialMlp> {
+  const packed: number[] = [];
+  for (let i = 0; i < n; i++) for (let j = 0; j <= i; j++) packed.push(L[i * n + j]!);
+  return { layers: mlp.layers.map((layer, i) => (i === mlp.layers.length - 1 ? { ...layer, bias: packed } : layer)) };
+}

@@ -1,0 +1,81 @@
+/**
+ * The contraction rate that a tube is built at: below the certificate's worst rate the margin falls with the rate and
+ * the authority, infinite at the worst rate, limits it. The whole trade-off is kept for the reader.
+ */
+import { type TubeDisturbance, tubeRadius } from "./tube.js";
+
+/** What a verified certificate tells a tube: suprema over the claimed envelope, each an upper bound in its evidence. */
+export interface CertificateExtremes {
+  /** Largest rate a tube may use, 1/s; 0 or less when the certificate fails. */
+  readonly usableRate: number;
+  readonly sigma: number;
+  /** sup of the authority density at a rate. */
+  readonly authorityDensity: (rate: number) => number;
+  /** sup of c^T W c for the asked margin, given the tube's radius (a heading error widens along and across). */
+  readonly goalSpread: (radius: number) => number;
+}
+
+export interface TradeOffPoint {
+  /** 1/s. */
+  readonly rate: number;
+  readonly radius: number;
+  /** The asked margin in scaled units. */
+  readonly margin: number;
+  /** Share of the inputs' half-range. */
+  readonly authority: number;
+}
+
+export type RateChoice =
+  | { readonly status: "chosen"; readonly point: TradeOffPoint; readonly curve: readonly TradeOffPoint[] }
+  /** The certificate contracts nowhere: no tube. */
+  | { readonly status: "noRate"; readonly curve: readonly TradeOffPoint[] }
+  /** No rate keeps the authority within the limit; `least` is the rate that needs least. */
+  | { readonly status: "authorityExceeded"; readonly least: TradeOffPoint; readonly curve: readonly TradeOffPoint[] };
+
+export interface TubeRequest {
+  readonly window: number;
+  readonly initialDistance: number;
+  readonly authorityLimit: number;
+  /** A rate that the user insists on, 1/s. */
+  readonly rate: number | null;
+}
+
+const CURVE_POINTS = 24;
+const BISECTIONS = 12;
+
+export function chooseRate(extremes: CertificateExtremes, request: TubeRequest): RateChoice {
+  const { usableRate } = extremes;
+  if (!(usableRate > 0)) return { status: "noRate", curve: [] };
+  const pointAt = (rate: number): TradeOffPoint => tradeOffAt(rate, extremes, request);
+  const curve = Array.from({ length: CURVE_POINTS }, (_, i) => pointAt((usableRate * (i + 1)) / CURVE_POINTS));
+  const isAllowed = (point: TradeOffPoint): boolean => point.authority <= request.authorityLimit;
+  if (request.rate !== null) {
+    if (request.rate > usableRate) return { status: "noRate", curve };
+    const point = pointAt(request.rate);
+    return isAllowed(point) ? { status: "chosen", point, curve } : { status: "authorityExceeded", least: point, curve };
+  }
+  const fastest = curve.findLastIndex(isAllowed);
+  if (fastest < 0) {
+    const least = curve.reduce((a, b) => (b.authority < a.authority ? b : a));
+    return { status: "authorityExceeded", least, curve };
+  }
+  let point = curve[fastest]!;
+  let refused = curve[fastest + 1]?.rate ?? point.rate;
+  for (let i = 0; i < BISECTIONS && refused > point.rate; i++) {
+    const middle = pointAt((point.rate + refused) / 2);
+    if (isAllowed(middle)) point = middle;
+    else refused = middle.rate;
+  }
+  return { status: "chosen", point, curve };
+}
+
+function tradeOffAt(rate: number, extremes: CertificateExtremes, request: TubeRequest): TradeOffPoint {
+  const disturbance: TubeDisturbance = { window: request.window, sigma: extremes.sigma };
+  const radius = tubeRadius(disturbance, rate, request.initialDistance);
+  return {
+    rate,
+    radius,
+    margin: radius * Math.sqrt(extremes.goalSpread(radius)),
+    authority: (radius * extremes.authorityDensity(rate)) / 2,
+  };
+}

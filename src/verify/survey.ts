@@ -1,0 +1,84 @@
+/**
+ * Sampled evidence for one certificate: every infimum and supremum of the tube over the box, by low-discrepancy points
+ * and ascent. It finds failures; it never shows that there are none.
+ */
+import type { ControlAffineModel } from "../model/controlAffine.js";
+import type { DualMetric } from "../nets/dualMetric.js";
+import { type Condition, condition } from "./condition.js";
+import { type Extreme, largest, refined, type ScanOptions, scan } from "./extreme.js";
+import { scanPoints } from "./scanPoints.js";
+import { type MarginDirection, spread } from "./spread.js";
+
+export interface SurveyedState {
+  /** Active coordinates. */
+  readonly at: Float64Array;
+  readonly rate: number;
+  /** Index of the worst input corner. */
+  readonly corner: number;
+}
+
+export interface Survey {
+  readonly condition: Condition;
+  /** The least pointwise rate found (1/s); -Infinity where W is not positive definite. */
+  readonly worst: SurveyedState;
+  /** Every scan point whose rate is below `rate`, worst first, at most `most`. */
+  violations(rate: number, most: number): SurveyedState[];
+  sigma(wbar: Float64Array): Extreme;
+  spread(direction: MarginDirection): Extreme;
+  authorityDensity(rate: number): Extreme;
+}
+
+export interface SurveyOptions {
+  /** Sobol points of the full scans; the authority curve scans an eighth of them. */
+  readonly points: number;
+  readonly starts: number;
+}
+
+const TOLERANCE = 1e-5;
+
+export function survey(model: ControlAffineModel, metric: DualMetric, { points, starts }: SurveyOptions): Survey {
+  const here = condition(model, metric);
+  const dimension = model.active.length;
+  const full: ScanOptions = { dimension, points: scanPoints(dimension, points), starts, tolerance: TOLERANCE };
+  const coarse: ScanOptions = {
+    ...full,
+    points: scanPoints(dimension, Math.ceil(points / 8)),
+    starts: Math.min(3, starts),
+  };
+  /** A value at a state; the worst possible where W is not positive definite. */
+  const at =
+    (value: () => number) =>
+    (active: Float64Array): number =>
+      here.moveTo(active) ? value() : Number.POSITIVE_INFINITY;
+
+  const negativeRate = at(() => -here.rate().rate);
+  const slow = refined(negativeRate, scan(negativeRate, full), full);
+  const surveyed = (active: Float64Array): SurveyedState => {
+    const isDefinite = here.moveTo(active);
+    const { rate, corner } = isDefinite ? here.rate() : { rate: Number.NEGATIVE_INFINITY, corner: 0 };
+    return { at: active, rate, corner };
+  };
+  return {
+    condition: here,
+    worst: surveyed(slow.at),
+    violations: (rate, most) =>
+      scan(negativeRate, { ...full, starts: most })
+        .filter((state) => -state.value < rate)
+        .map((state) => surveyed(state.at)),
+    sigma: (wbar) =>
+      largest(
+        at(() => here.sigma(wbar)),
+        full,
+      ),
+    spread: (direction) =>
+      largest(
+        at(() => spread(here.W, model.n, model.rotation, direction)),
+        full,
+      ),
+    authorityDensity: (rate) =>
+      largest(
+        at(() => here.authorityDensity(rate)),
+        coarse,
+      ),
+  };
+}
