@@ -5,7 +5,7 @@
  *   + kappa_v mean max(0, 1 + slack - rate / lambda)
  *   + kappa_a max(0, log authority - log limit),    authority = 1/2 R max density(lambda)
  *
- * Each maximum over states is a power mean of high order, so that every near-worst state pulls. A state that fails at
+ * The gradient of a maximum over states is that of their power mean of high order, so that every near-worst state pulls. A state that fails at
  * lambda has an infinite density: there only the hinge on the rate acts.
  */
 import type { MetricAdjoint, StateTerms } from "./stateTerms.js";
@@ -76,9 +76,9 @@ export function batchObjective(
     densities[i] = Number.isFinite(density) ? density : 0;
   });
 
-  const sigma = powerMean(sigmas);
-  const spread = powerMean(spreads);
-  const density = powerMean(densities);
+  const sigma = softMaximum(sigmas);
+  const spread = softMaximum(spreads);
+  const density = softMaximum(densities);
   const windowed = window === 0 ? 1 / lambda : -window / Math.expm1(-lambda * window);
   const windowedSlope =
     window === 0 ? -1 : (-lambda * window * Math.exp(-lambda * window)) / -Math.expm1(-lambda * window);
@@ -110,8 +110,8 @@ export function batchObjective(
   };
 }
 
-/** (mean of x^ORDER)^(1/ORDER) up to its factor count^(1/ORDER), and d log(value) / d log(x_i). */
-function powerMean(x: Float64Array): { value: number; weights: Float64Array } {
+/** The largest x_i, and d log(power mean of x) / d log(x_i): weights that sum to 1. */
+function softMaximum(x: Float64Array): { value: number; weights: Float64Array } {
   const top = x.reduce((a, b) => Math.max(a, b), 0);
   const weights = new Float64Array(x.length);
   if (top === 0) return { value: 0, weights };

@@ -4,7 +4,18 @@
  * the last whole stage.
  */
 import { createHash } from "node:crypto";
-import { closeSync, existsSync, fsyncSync, mkdirSync, openSync, readdirSync, readFileSync, renameSync, rmSync, writeSync } from "node:fs";
+import {
+  closeSync,
+  existsSync,
+  fsyncSync,
+  mkdirSync,
+  openSync,
+  readdirSync,
+  readFileSync,
+  renameSync,
+  rmSync,
+  writeFileSync,
+} from "node:fs";
 import { join } from "node:path";
 
 export interface StageRecord {
@@ -18,7 +29,9 @@ export interface StageRecord {
 export interface Manifest {
   readonly format: 1;
   readonly tool: { readonly name: "fairlead"; readonly version: string };
-  readonly node: string;
+  readonly runtime: string;
+  /** Where the plant file was read: its log paths are relative to this. */
+  readonly plantPath: string;
   /** SHA-256 of the plant file and of every log, by name. */
   readonly inputs: Readonly<Record<string, string>>;
   readonly seed: number;
@@ -49,7 +62,8 @@ export interface RunFolder {
 /** Opens DIR, making it when `create`; leftovers of a killed write are removed. */
 export function openRunFolder(path: string, create: boolean): RunFolder {
   if (!existsSync(path)) {
-    if (!create) throw new RunFolderError(`${path}: no such run folder; make one with 'fairlead run PLANT.yaml --out ${path}'`);
+    if (!create)
+      throw new RunFolderError(`${path}: no such run folder; make one with 'fairlead run PLANT.yaml --out ${path}'`);
     mkdirSync(path, { recursive: true });
   }
   const entries = readdirSync(path);
@@ -99,7 +113,7 @@ function writeWhole(path: string, text: string): void {
   const temporary = `${path}${TEMPORARY}`;
   const handle = openSync(temporary, "w");
   try {
-    writeSync(handle, text);
+    writeFileSync(handle, text);
     fsyncSync(handle);
   } finally {
     closeSync(handle);

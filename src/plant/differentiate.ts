@@ -7,7 +7,10 @@ import type { Expression } from "./expression.js";
 import { add, call, constant, divide, multiply, negate, ONE, power, subtract, ZERO } from "./simplify.js";
 
 /** d e / d leaf. */
-export function differentiate(e: Expression, leaf: { readonly kind: "state" | "input"; readonly index: number }): Expression {
+export function differentiate(
+  e: Expression,
+  leaf: { readonly kind: "state" | "input"; readonly index: number },
+): Expression {
   const d = (part: Expression): Expression => differentiate(part, leaf);
   switch (e.kind) {
     case "constant":
@@ -33,11 +36,12 @@ export function differentiate(e: Expression, leaf: { readonly kind: "state" | "i
   }
 }
 
-/** k b^(k-1); written k b^k / b where k - 1 is no float64 (the two are equal). */
+/** k b^(k-1); written k b^k / b where k - 1 is no float64 (the two are equal). TwoSum: Knuth, TAOCP 2, 4.2.2. */
 function powerSlope(base: Expression, exponent: number): Expression {
   const below = exponent - 1;
-  const isExact = below + 1 === exponent && exponent - below === 1;
-  const body = isExact ? power(base, below) : divide(power(base, exponent), base);
+  const taken = below - exponent;
+  const roundoff = exponent - (below - taken) + (-1 - taken);
+  const body = roundoff === 0 ? power(base, below) : divide(power(base, exponent), base);
   return multiply(constant(exponent), body);
 }
 

@@ -3,9 +3,9 @@
  * methods for approximate dictionary searching", ACM J. Exp. Algorithmics 16, 2011, section 2.1), letter case ignored.
  */
 
-/** Null when no name is within a third of the given one's length (at least one edit). */
+/** Null when no name is within a third of the given one's length (at least one edit, never all of it). */
 export function nearestName(given: string, allowed: Iterable<string>): string | null {
-  const limit = Math.max(1, Math.floor(given.length / 3));
+  const limit = Math.min(Math.max(1, Math.floor(given.length / 3)), given.length - 1);
   let best: string | null = null;
   let least = limit + 1;
   for (const name of allowed) {

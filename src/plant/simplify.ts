@@ -55,6 +55,7 @@ export function multiply(left: Expression, right: Expression): Expression {
     if (both !== null) return multiply(both, right.right);
   }
   if (isSignOf(right, left)) return call("abs", [left]);
+  if (left.kind === "multiply" && isSignOf(right, left.right)) return multiply(left.left, call("abs", [left.right]));
   if (isSignOf(left, right)) return call("abs", [right]);
   return { kind: "multiply", left, right };
 }

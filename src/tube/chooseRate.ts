@@ -44,9 +44,11 @@ const CURVE_POINTS = 24;
 const BISECTIONS = 12;
 
 export function chooseRate(extremes: CertificateExtremes, request: TubeRequest): RateChoice {
-  const { usableRate } = extremes;
-  if (!(usableRate > 0)) return { status: "noRate", curve: [] };
+  if (!(extremes.usableRate > 0)) return { status: "noRate", curve: [] };
   const pointAt = (rate: number): TradeOffPoint => tradeOffAt(rate, extremes, request);
+  const usableRate = Number.isFinite(extremes.usableRate)
+    ? extremes.usableRate
+    : firstRateOverLimit(pointAt, request.authorityLimit);
   const curve = Array.from({ length: CURVE_POINTS }, (_, i) => pointAt((usableRate * (i + 1)) / CURVE_POINTS));
   const isAllowed = (point: TradeOffPoint): boolean => point.authority <= request.authorityLimit;
   if (request.rate !== null) {
@@ -67,6 +69,13 @@ export function chooseRate(extremes: CertificateExtremes, request: TubeRequest):
     else refused = middle.rate;
   }
   return { status: "chosen", point, curve };
+}
+
+/** Every state is actuated, so every rate is usable: doubling from 1/s until the authority, which grows without end, is over its limit. */
+function firstRateOverLimit(pointAt: (rate: number) => TradeOffPoint, limit: number): number {
+  let rate = 1;
+  while (pointAt(rate).authority <= limit && rate < 1e6) rate *= 2;
+  return rate;
 }
 
 function tradeOffAt(rate: number, extremes: CertificateExtremes, request: TubeRequest): TradeOffPoint {

@@ -25,9 +25,8 @@ describe("small dense kernels against ml-matrix", () => {
       const residual = Matrix.sub(toMatrix(a, n).mmul(V), V.mmul(Matrix.diag(Array.from(values)))).norm();
       expect(residual).toBeLessThan(1e-13);
       expect(Matrix.sub(V.transpose().mmul(V), Matrix.eye(n)).norm()).toBeLessThan(1e-13);
-      Array.from(values)
-        .sort((x, y) => x - y)
-        .forEach((value, i) => expect(value).toBeCloseTo(reference[i]!, 12));
+      const sorted = Array.from(values).sort((x, y) => x - y);
+      for (const [i, value] of sorted.entries()) expect(value).toBeCloseTo(reference[i]!, 12);
     }
   });
   it("rangeAndNull: orthonormal, spanning, orthogonal to B", () => {

@@ -1,0 +1,109 @@
+/**
+ * The command line: arguments in, one job or stage, messages and exit status out.
+ *   0 done and the certificate holds as asked    2 misuse or bad input
+ *   3 done, but it does not hold as asked        1 anything else
+ */
+import { Command, CommanderError } from "commander";
+import { LogError } from "../logs/logError.js";
+import { STAGES } from "../pipeline/job.js";
+import { RunFolderError } from "../pipeline/runFolder.js";
+import { FAIRLEAD_VERSION } from "../pipeline/version.js";
+import { doctor } from "./doctor.js";
+import { InputError } from "./inputError.js";
+import { runCommand, stageCommand } from "./runCommand.js";
+
+export type ExitStatus = 0 | 1 | 2 | 3;
+
+export interface Streams {
+  readonly out: NodeJS.WriteStream;
+  readonly err: NodeJS.WriteStream;
+}
+
+export async function main(args: readonly string[], streams: Streams = process): Promise<ExitStatus> {
+  let status: ExitStatus = 0;
+  const stop = new AbortController();
+  const onInterrupt = (): void => {
+    if (stop.signal.aborted) process.exit(1);
+    streamErr("stopping after the present step; press Ctrl-C again to end at once\n");
+    stop.abort();
+  };
+  const streamErr = (text: string): void => {
+    streams.err.write(text);
+  };
+  process.on("SIGINT", onInterrupt);
+  process.on("SIGTERM", onInterrupt);
+  const program = describe(streams, stop.signal, (code) => {
+    status = code;
+  });
+  try {
+    await program.parseAsync(args, { from: "user" });
+    return status;
+  } catch (error) {
+    return explain(error, stop.signal, streamErr);
+  } finally {
+    process.off("SIGINT", onInterrupt);
+    process.off("SIGTERM", onInterrupt);
+  }
+}
+
+function explain(error: unknown, signal: AbortSignal, print: (text: string) => void): ExitStatus {
+  if (error instanceof CommanderError) return error.exitCode === 0 ? 0 : 2;
+  if (error instanceof InputError || error instanceof LogError || error instanceof RunFolderError) {
+    print(`${error.message}\n`);
+    return 2;
+  }
+  if (signal.aborted) {
+    print("stopped; what is in the run folder is whole, and the same command goes on from there\n");
+    return 1;
+  }
+  print(`fairlead failed: ${error instanceof Error ? (error.stack ?? error.message) : String(error)}\n`);
+  return 1;
+}
+
+function describe(streams: Streams, signal: AbortSignal, finish: (status: ExitStatus) => void): Command {
+  const program = new Command("fairlead")
+    .description("Tracking margins from recorded runs and a half-known model.")
+    .version(FAIRLEAD_VERSION)
+    .exitOverride()
+    .configureOutput({
+      writeOut: (text) => streams.out.write(text),
+      writeErr: (text) => streams.err.write(text),
+    })
+    .showHelpAfterError("(run with --help for what is allowed)");
+  const common = (command: Command): Command =>
+    command
+      .option("--json", "print the machine form to standard output", false)
+      .option("--quiet", "no progress on standard error", false);
+
+  common(program.command("run <plant>").description("the whole job: plant file and logs to margin and report"))
+    .requiredOption("--out <dir>", "run folder")
+    .option("--seed <n>", "seed of everything random; default: the plant file's", wholeNumber)
+    .action(async (plant: string, options: RunOptions) => finish(await runCommand(plant, options, streams, signal)));
+  for (const stage of STAGES) {
+    common(program.command(`${stage.name} <dir>`).description(`one stage: ${stage.title}`)).action(
+      async (dir: string, options: Omit<RunOptions, "out">) =>
+        finish(await stageCommand(stage, dir, options, streams, signal)),
+    );
+  }
+  program
+    .command("doctor")
+    .description("engine, versions and a self-check")
+    .option("--json", "print the machine form to standard output", false)
+    .action(async (options: { json: boolean }) => finish(await doctor(options, streams)));
+  for (const command of program.commands) command.exitOverride().copyInheritedSettings(program);
+  return program;
+}
+
+export interface RunOptions {
+  readonly out: string;
+  readonly json: boolean;
+  readonly quiet: boolean;
+  readonly seed?: number;
+}
+
+function wholeNumber(text: string): number {
+  if (!/^\d{1,9}$/.test(text)) {
+    throw new InputError(`--seed: given '${text}'; allowed is a whole number from 0 to 999999999`);
+  }
+  return Number(text);
+}

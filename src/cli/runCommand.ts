@@ -1,0 +1,110 @@
+/** `fairlead run` and the single stages: read the plant file, run the job, print the verdict. */
+import { readFileSync } from "node:fs";
+import { resolve } from "node:path";
+import { type JobOutcome, runJob, runOneStage } from "../pipeline/job.js";
+import { openRunFolder, type RunFolder } from "../pipeline/runFolder.js";
+import type { Stage, StageOutcome } from "../pipeline/stage.js";
+import type { Plant } from "../plant/plant.js";
+import { formatProblems, readPlant } from "../plant/readPlant.js";
+import { summaryTable } from "../report/summaryTable.js";
+import { InputError } from "./inputError.js";
+import type { ExitStatus, RunOptions, Streams } from "./main.js";
+import { silentProgress, terminalProgress } from "./progress.js";
+
+interface LoadedPlant {
+  readonly plant: Plant;
+  readonly text: string;
+  readonly path: string;
+}
+
+export async function runCommand(
+  path: string,
+  options: RunOptions,
+  streams: Streams,
+  signal: AbortSignal,
+): Promise<ExitStatus> {
+  const loaded = loadPlant(resolve(path));
+  const folder = openRunFolder(resolve(options.out), true);
+  const progress = options.quiet ? silentProgress : terminalProgress(streams.err);
+  const say = options.quiet ? () => undefined : (text: string) => void streams.err.write(text);
+  const outcome = await runJob({
+    ...job(loaded, folder, options, signal),
+    progress: progress.update,
+    finished: (stage) => {
+      progress.settle();
+      say(stageLine(stage));
+    },
+  });
+  progress.settle();
+  return conclude(outcome, options, streams, folder);
+}
+
+export async function stageCommand(
+  stage: Stage,
+  dir: string,
+  options: Omit<RunOptions, "out">,
+  streams: Streams,
+  signal: AbortSignal,
+): Promise<ExitStatus> {
+  const folder = openRunFolder(resolve(dir), false);
+  const manifest = folder.manifest();
+  if (manifest === null)
+    throw new InputError(`${dir}: an empty folder; make a run folder with 'fairlead run PLANT.yaml --out ${dir}'`);
+  const loaded = parsePlant(folder.readText("plant.yaml"), manifest.plantPath);
+  const progress = options.quiet ? silentProgress : terminalProgress(streams.err);
+  const outcome = await runOneStage(stage, {
+    ...job(loaded, folder, { seed: manifest.seed }, signal),
+    progress: progress.update,
+    finished: () => progress.settle(),
+  });
+  progress.settle();
+  if (!options.quiet) streams.err.write(stageLine(outcome));
+  if (options.json)
+    streams.out.write(`${JSON.stringify({ stage: stage.name, files: stage.makes, seconds: outcome.seconds })}\n`);
+  return 0;
+}
+
+function job(loaded: LoadedPlant, folder: RunFolder, options: { seed?: number | undefined }, signal: AbortSignal) {
+  return {
+    plant: loaded.plant,
+    plantText: loaded.text,
+    plantPath: loaded.path,
+    folder,
+    seed: options.seed ?? loaded.plant.settings.seed,
+    runtime: `node ${process.version}`,
+    signal,
+  };
+}
+
+function loadPlant(path: string): LoadedPlant {
+  let text: string;
+  try {
+    text = readFileSync(path, "utf8");
+  } catch (error) {
+    const reason = (error as NodeJS.ErrnoException).code === "ENOENT" ? "no such file" : "cannot be read";
+    throw new InputError(
+      `${path}: ${reason}; give the path of a plant file (YAML), such as configs/orchard-rover.yaml`,
+    );
+  }
+  return parsePlant(text, path);
+}
+
+function parsePlant(text: string, path: string): LoadedPlant {
+  const result = readPlant(text, path);
+  if (!result.ok) throw new InputError(formatProblems(path, result.problems));
+  return { plant: result.plant, text, path };
+}
+
+function stageLine(stage: StageOutcome): string {
+  const time = stage.reused ? "kept from before" : `${stage.seconds.toFixed(1)} s`;
+  return `  ${stage.name.padEnd(9)} ${time}${stage.note === "" ? "" : `  ${stage.note}`}\n`;
+}
+
+function conclude({ summary }: JobOutcome, options: RunOptions, streams: Streams, folder: RunFolder): ExitStatus {
+  if (options.json) streams.out.write(`${JSON.stringify(summary, null, 1)}\n`);
+  streams.err.write(
+    `\n${summaryTable(summary, { width: streams.err.columns ?? 100, color: streams.err.isTTY === true })}\n`,
+  );
+  streams.err.write(`report: ${folder.file("report.html")}\n`);
+  return summary.verdict.holds ? 0 : 3;
+}

@@ -1,0 +1,130 @@
+/**
+ * YAML text -> plain values, and the line and column of every key, value and character inside a value. YAML 1.2 core
+ * schema (yaml.org, 2021), keys are text. Refused with their place: syntax errors, keys written twice, aliases without
+ * an anchor, tags that are not understood.
+ */
+import {
+  type Alias,
+  type Document,
+  isAlias,
+  isMap,
+  isScalar,
+  isSeq,
+  LineCounter,
+  type Node,
+  parseDocument,
+  Scalar,
+  visit,
+} from "yaml";
+import type { Path, Problem } from "./problems.js";
+
+export interface YamlSource {
+  /** Plain values; undefined when the text is no YAML. */
+  readonly value: unknown;
+  readonly problems: readonly Problem[];
+  /** Start of the value at a path, or of the deepest part of the path that is there. */
+  valuePlace(path: Path): { line: number; column: number };
+  /** Start of the key at a path. */
+  keyPlace(path: Path): { line: number; column: number };
+  /** Place of a character of the text at a path. */
+  textPlace(path: Path, offset: number): { line: number; column: number };
+}
+
+export function readYaml(text: string): YamlSource {
+  const lines = new LineCounter();
+  const document: Document = parseDocument(text, { lineCounter: lines, prettyErrors: false, stringKeys: true });
+  const place = (offset: number): { line: number; column: number } => {
+    const { line, col } = lines.linePos(Math.min(Math.max(offset, 0), text.length));
+    return { line: Math.max(line, 1), column: Math.max(col, 1) };
+  };
+  const problems: Problem[] = [...document.errors, ...document.warnings].map((error) => {
+    const given = text.slice(error.pos[0], error.pos[1]).split("\n")[0]!;
+    const message =
+      error.code === "DUPLICATE_KEY"
+        ? `key '${keyText(text, error.pos[0])}' is written twice in the same map; keep one`
+        : `no valid YAML at '${given.slice(0, 30)}': ${error.message}`;
+    return { ...place(error.pos[0]), message };
+  });
+  const isReadable = document.errors.every((error) => error.code === "DUPLICATE_KEY");
+  visit(document, {
+    Alias(_, node) {
+      if (node.resolve(document) !== undefined) return undefined;
+      const message = `alias '*${node.source}' has no anchor '&${node.source}' before it; write the value itself`;
+      problems.push({ ...place(node.range?.[0] ?? 0), message });
+      return Object.assign(new Scalar(null), { range: node.range });
+    },
+  });
+  let value: unknown;
+  try {
+    if (isReadable) value = document.toJS();
+  } catch (error) {
+    problems.push({ line: 1, column: 1, message: `the YAML cannot be expanded: ${(error as Error).message}` });
+  }
+  return {
+    value,
+    problems,
+    valuePlace: (path) => place(startOf(walk(document, path).value) ?? 0),
+    keyPlace: (path) => {
+      const { key, value: at } = walk(document, path);
+      return place(startOf(key ?? at) ?? 0);
+    },
+    textPlace: (path, offset) => {
+      const { value: node } = walk(document, path);
+      return place(isScalar(node) ? sourceOffset(text, node, offset) : (startOf(node) ?? 0));
+    },
+  };
+}
+
+function keyText(text: string, from: number): string {
+  return /^[^:\s,{}]*/.exec(text.slice(from, from + 60))![0];
+}
+
+/** Key and value nodes at a path; where it ends early, those of its deepest part that is there. */
+function walk(document: Document, path: Path): { key: Node | null; value: Node | null } {
+  let key: Node | null = null;
+  let value: Node | null = document.contents as Node | null;
+  for (const step of path) {
+    if (isAlias(value)) value = (value as Alias).resolve(document) ?? null;
+    if (isMap(value)) {
+      // of a key written twice the last is the one whose value counts
+      const pair = value.items.findLast((item) => isScalar(item.key) && String(item.key.value) === String(step));
+      if (pair === undefined) return { key, value };
+      key = pair.key as Node;
+      value = (pair.value as Node | null) ?? key;
+    } else if (isSeq(value) && typeof step === "number") {
+      const item = value.items[step] as Node | undefined;
+      if (item === undefined) return { key, value };
+      key = null;
+      value = item;
+    } else return { key, value };
+  }
+  return { key, value };
+}
+
+function startOf(node: Node | null): number | null {
+  return node?.range?.[0] ?? null;
+}
+
+/**
+ * Offset in the file of a character of a scalar's text. Quotes, indentation and folding change only blanks (and escapes,
+ * which formulas do not need), so the k-th character that is no blank is the k-th one of the source as well.
+ */
+function sourceOffset(text: string, node: Scalar, offset: number): number {
+  const value = String(node.value);
+  const [start, end] = node.range!;
+  const isBlock = node.type === "BLOCK_FOLDED" || node.type === "BLOCK_LITERAL";
+  const isQuoted = node.type === "QUOTE_DOUBLE" || node.type === "QUOTE_SINGLE";
+  let at = isBlock ? text.indexOf("\n", start) + 1 : start + (isQuoted ? 1 : 0);
+  let toSkip = value.slice(0, offset).replace(/\s/g, "").length;
+  if (value.slice(offset).trim() === "") {
+    // just behind the last character
+    for (; at < end && toSkip > 0; at++) if (!/\s/.test(text[at]!)) toSkip--;
+    return at;
+  }
+  for (; at < end; at++) {
+    if (/\s/.test(text[at]!)) continue;
+    if (toSkip === 0) break;
+    toSkip--;
+  }
+  return at;
+}
