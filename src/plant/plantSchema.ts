@@ -3,6 +3,7 @@
  * (readQuantities.ts, readRates.ts, readSettings.ts). Descriptions are shown by editors and quoted in messages.
  */
 import { z } from "zod";
+import { unitNames } from "./units.js";
 
 /** Largest plant. */
 export const MAX_STATES = 12;
@@ -11,7 +12,11 @@ export const MAX_LEFTOVER = 16;
 
 const NAME = /^[A-Za-z][A-Za-z0-9_]{0,39}$/;
 const name = z.string().regex(NAME, "a name: a letter, then letters, digits or _, at most 40");
-const unit = z.string().describe("unit of the value as people write it, such as m, deg, m/s or N m");
+// which units there are is said to editors here and checked by the readers, which know what the unit is for
+const unit = z
+  .string()
+  .meta({ enum: unitNames() })
+  .describe("unit of the value as people write it, such as m, deg, m/s or N m");
 const positive = z.number().positive();
 const pair = z.tuple([z.number(), z.number()]);
 const column = z.string().min(1).describe("column of the log files");

@@ -23,7 +23,9 @@ export function checkForm(value: unknown, report: Report): { file: PlantFile | n
     const given = valueAt(value, path);
     if (given === undefined && misspelt.has(JSON.stringify(path))) continue;
     reportIssue(issue, path, given, schema, report);
-    removeAt(draft, path);
+    const isDeclared = path[0] === "states" || path[0] === "inputs";
+    if (issue.code === "invalid_key" && !isDeclared) dropAt(draft, path);
+    else removeAt(draft, path);
   }
   return { file: null, draft: (isObject(draft) ? draft : {}) as PlantDraft };
 }
@@ -67,9 +69,21 @@ function reportIssue(issue: z.core.$ZodIssue, path: Path, given: unknown, schema
       key: true,
     });
   } else {
-    const wanted = issue.code === "invalid_union" ? "" : ` (${issue.message.replace(/^Invalid input: /, "")})`;
+    const wanted = issue.code === "invalid_union" ? "" : ` (${inYamlWords(issue.message)})`;
     report(path, `'${path.join(".")}' is ${show(given)}${wanted}; allowed: ${meaning}`);
   }
+}
+
+const YAML_WORDS: readonly (readonly [RegExp, string])[] = [
+  [/^Invalid input: /, ""],
+  [/\b(record|object)\b/g, "map"],
+  [/\b(array|tuple)\b/g, "list"],
+  [/\bstring\b/g, "text"],
+  [/\bint\b/g, "whole number"],
+];
+
+function inYamlWords(message: string): string {
+  return YAML_WORDS.reduce((text, [word, by]) => text.replace(word, by), message);
 }
 
 function show(value: unknown): string {
@@ -90,11 +104,17 @@ function valueAt(value: unknown, path: Path): unknown {
   return at;
 }
 
-/** A list entry leaves a hole, so that the places of the others stay right. */
+/** The key stays, so that a name is still known where it is used and the places of list entries stay right. */
 function removeAt(value: unknown, path: Path): void {
   const parent = valueAt(value, path.slice(0, -1));
   const last = path.at(-1);
-  if (isObject(parent) && last !== undefined) delete (parent as Record<string | number, unknown>)[last];
+  if (isObject(parent) && last !== undefined && Object.hasOwn(parent, last))
+    (parent as Record<string | number, unknown>)[last] = undefined;
+}
+
+function dropAt(value: unknown, path: Path): void {
+  const parent = valueAt(value, path.slice(0, -1));
+  if (isObject(parent)) delete (parent as Record<string | number, unknown>)[path.at(-1)!];
 }
 
 function isObject(value: unknown): value is object {

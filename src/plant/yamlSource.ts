@@ -15,6 +15,7 @@ import {
   parseDocument,
   Scalar,
   visit,
+  type YAMLError,
 } from "yaml";
 import type { Path, Problem } from "./problems.js";
 
@@ -38,11 +39,7 @@ export function readYaml(text: string): YamlSource {
     return { line: Math.max(line, 1), column: Math.max(col, 1) };
   };
   const problems: Problem[] = [...document.errors, ...document.warnings].map((error) => {
-    const given = text.slice(error.pos[0], error.pos[1]).split("\n")[0]!;
-    const message =
-      error.code === "DUPLICATE_KEY"
-        ? `key '${keyText(text, error.pos[0])}' is written twice in the same map; keep one`
-        : `no valid YAML at '${given.slice(0, 30)}': ${error.message}`;
+    const message = errorMessage(error, text);
     return { ...place(error.pos[0]), message };
   });
   const isReadable = document.errors.every((error) => error.code === "DUPLICATE_KEY");
@@ -51,7 +48,15 @@ export function readYaml(text: string): YamlSource {
       if (node.resolve(document) !== undefined) return undefined;
       const message = `alias '*${node.source}' has no anchor '&${node.source}' before it; write the value itself`;
       problems.push({ ...place(node.range?.[0] ?? 0), message });
-      return Object.assign(new Scalar(null), { range: node.range });
+      const empty = new Scalar(null);
+      empty.range = node.range ?? null;
+      return empty;
+    },
+  });
+  visit(document, {
+    Pair(_, { key }) {
+      if (!isScalar(key) || key.value !== "__proto__") return;
+      problems.push({ ...place(key.range?.[0] ?? 0), message: "key '__proto__' is not allowed; use another name" });
     },
   });
   let value: unknown;
@@ -73,6 +78,21 @@ export function readYaml(text: string): YamlSource {
       return place(isScalar(node) ? sourceOffset(text, node, offset) : (startOf(node) ?? 0));
     },
   };
+}
+
+function errorMessage({ code, message, pos }: YAMLError, text: string): string {
+  switch (code) {
+    case "DUPLICATE_KEY":
+      return `key '${keyText(text, pos[0])}' is written twice in the same map; keep one`;
+    case "MULTIPLE_DOCS":
+      return "a plant file is one YAML document; remove '---' and what follows or precedes it";
+    case "NON_STRING_KEY":
+      return "a list or a map cannot be a key; write a name";
+    default: {
+      const given = text.slice(pos[0], pos[1]).split("\n")[0]!.slice(0, 30).trim();
+      return `no valid YAML${given === "" ? "" : ` at '${given}'`}: ${message}`;
+    }
+  }
 }
 
 function keyText(text: string, from: number): string {
