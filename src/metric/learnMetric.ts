@@ -12,11 +12,12 @@ import { initialMlp, trainableMlp } from "../engine/trainableMlp.js";
 import type { ControlAffineModel } from "../model/controlAffine.js";
 import type { DualMetricFile } from "../nets/dualMetric.js";
 import type { Feature } from "../nets/features.js";
+import type { Layer, Mlp } from "../nets/mlp.js";
 import { cholesky, symmetricEigen } from "../num/dense.js";
 import type { Random } from "../num/random.js";
 import type { BatchValue, ObjectiveSettings } from "./batchObjective.js";
 import { metricTrainer } from "./metricTrainer.js";
-import { packedSize } from "./packedFactor.js";
+import { leftProduct, packedSize } from "./packedFactor.js";
 import { type TrainingState, trainingState } from "./trainingState.js";
 
 export interface LearnSettings extends ObjectiveSettings {
@@ -66,8 +67,9 @@ const POOL = 2048;
 const BATCH = 96;
 const HARD_IN_BATCH = 48;
 const HARD_KEPT = 256;
-const LEARNING_RATE = 4e-3;
-const RATE_LEARNING_RATE = 1e-2;
+const LAST_SCALE = 0.02;
+const LEARNING_RATE = 3e-2;
+const RATE_LEARNING_RATE = 3e-2;
 
 export async function learnMetric(
   model: ControlAffineModel,
@@ -79,8 +81,18 @@ export async function learnMetric(
   const { engine, random, judge, progress } = services;
   const { w0, L } = startFactor(settings.start, n);
   const sizes = [settings.features.length, settings.width, settings.width, packedSize(n)];
-  const net = trainableMlp(engine.tf, biased(initialMlp(sizes, random.stream("weights"), 0.02), L, n));
-  const toFile = (): DualMetricFile => ({ kind: "network", n, w0, features: settings.features, mlp: net.toMlp() });
+  const mix = leftProduct(L, n);
+  const net = trainableMlp(
+    engine.tf,
+    withBias(initialMlp(sizes, random.stream("weights"), LAST_SCALE), packedIdentity(n)),
+  );
+  const toFile = (): DualMetricFile => ({
+    kind: "network",
+    n,
+    w0,
+    features: settings.features,
+    mlp: mixed(net.toMlp(), mix),
+  });
   const draw = random.stream("states");
   const pool = Array.from({ length: POOL }, () =>
     trainingState(
@@ -91,7 +103,7 @@ export async function learnMetric(
   );
   const hard: TrainingState[] = [];
   const pick = random.stream("batches");
-  const trainer = metricTrainer(engine, net, model, corners, w0, BATCH, settings);
+  const trainer = metricTrainer(engine, net, model, corners, w0, mix, BATCH, settings);
   const history: LearnStep[] = [];
 
   let lambda = settings.rate ?? settings.initialRate;
@@ -152,9 +164,31 @@ function startFactor(start: Float64Array, n: number): { w0: number; L: Float64Ar
   return { w0, L };
 }
 
-/** The network with the bias of its last layer set to the packed rows of L. */
-function biased(mlp: ReturnType<typeof initialMlp>, L: Float64Array, n: number): ReturnType<typeof initialMlp> {
-  const packed: number[] = [];
-  for (let i = 0; i < n; i++) for (let j = 0; j <= i; j++) packed.push(L[i * n + j]!);
-  return { layers: mlp.layers.map((layer, i) => (i === mlp.layers.length - 1 ? { ...layer, bias: packed } : layer)) };
+function packedIdentity(n: number): number[] {
+  return Array.from({ length: n }, (_, i) => Array.from({ length: i + 1 }, (_, j) => (i === j ? 1 : 0))).flat();
+}
+
+function withLast(mlp: Mlp, change: (last: Layer) => Layer): Mlp {
+  return { layers: [...mlp.layers.slice(0, -1), change(mlp.layers.at(-1)!)] };
+}
+
+function withBias(mlp: Mlp, bias: readonly number[]): Mlp {
+  return withLast(mlp, (last) => ({ ...last, bias }));
+}
+
+/** The network followed by y -> y T, as one network. */
+function mixed(mlp: Mlp, T: readonly (readonly number[])[]): Mlp {
+  const size = T.length;
+  return withLast(mlp, ({ weights, bias }) => {
+    const combine = (values: (k: number) => number, to: number): number => {
+      let sum = 0;
+      for (let k = 0; k < size; k++) sum += T[k]![to]! * values(k);
+      return sum;
+    };
+    const rows = Array.from({ length: size }, (_, to) => to);
+    return {
+      weights: rows.map((to) => weights[0]!.map((_, c) => combine((k) => weights[k]![c]!, to))),
+      bias: rows.map((to) => combine((k) => bias[k]!, to)),
+    };
+  });
 }

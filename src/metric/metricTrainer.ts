@@ -1,9 +1,10 @@
 /**
  * One step at a time on the weights of the metric network and on log lambda, both by Adam (Kingma and Ba, ICLR 2015,
  * algorithm 1). The engine evaluates the network and its tangents and differentiates them; the objective's gradient in
- * W enters as fixed adjoints, computed in float64.
+ * W enters as fixed adjoints, computed in float64. The network is trained for the factor relative to the start's, L = L0 Y
+ * (`mix` is the matrix of Y -> L0 Y on packed rows), so that every entry of Y is of the order of one.
  */
-import type { Tensor2D, Tensor3D } from "@tensorflow/tfjs-core";
+import type { Scalar, Tensor2D } from "@tensorflow/tfjs-core";
 import type { Engine } from "../engine/openEngine.js";
 import type { trainableMlp } from "../engine/trainableMlp.js";
 import type { ControlAffineModel } from "../model/controlAffine.js";
@@ -19,6 +20,7 @@ export function metricTrainer(
   model: ControlAffineModel,
   corners: readonly Float64Array[],
   w0: number,
+  mix: readonly (readonly number[])[],
   batchSize: number,
   settings: ObjectiveSettings & { readonly features: readonly Feature[] },
 ) {
@@ -28,6 +30,7 @@ export function metricTrainer(
   const inputs = settings.features.length;
   const terms = stateTerms(n, m, model.rotation, corners);
   const optimizer = tf.train.adam(1e-3);
+  const toFactor = tf.tensor2d(mix.map((row) => [...row]));
   const square = (): Float64Array => new Float64Array(n * n);
   const slots = Array.from({ length: batchSize }, () => ({
     L: square(),
@@ -54,17 +57,19 @@ export function metricTrainer(
         tf.tensor2d(x, [count, inputs]),
         tf.tensor3d(directions, [count, m + 1, inputs]),
       );
-      const result = adjoints(batch, out.y.dataSync(), out.dy.dataSync(), lambda);
+      const l = tf.matMul(out.y, toFactor);
+      const dl = tf.matMul(tf.reshape(out.dy, [count * (m + 1), packed]) as Tensor2D, toFactor);
+      const result = adjoints(batch, l.dataSync(), dl.dataSync(), lambda);
       value = result.value;
       const onValue: Tensor2D = tf.tensor2d(result.y, [count, packed]);
-      const onTangents: Tensor3D = tf.tensor3d(result.dy, [count, m + 1, packed]);
-      return tf.add(tf.sum(tf.mul(out.y, onValue)), tf.sum(tf.mul(out.dy, onTangents))).asScalar();
+      const onTangents: Tensor2D = tf.tensor2d(result.dy, [count * (m + 1), packed]);
+      return tf.add(tf.sum(tf.mul(l, onValue)), tf.sum(tf.mul(dl, onTangents))) as Scalar;
     };
     tf.tidy(() => {
       const { grads, value: unused } = tf.variableGrads(surrogate, net.variables);
       unused.dispose();
       setLearningRate(optimizer, learningRate);
-      optimizer.applyGradients(grads);
+      optimizer.applyGradients(grads as Parameters<typeof optimizer.applyGradients>[0]);
     });
     return value;
   };
@@ -111,6 +116,7 @@ export function metricTrainer(
     stepRate,
     dispose: (): void => {
       optimizer.dispose();
+      toFactor.dispose();
       net.dispose();
     },
   };

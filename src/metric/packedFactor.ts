@@ -47,3 +47,17 @@ export function addFactorAdjoint(G: Float64Array, L: Float64Array, out: Float32A
     }
   }
 }
+
+/**
+ * The matrix of Y -> L0 Y on packed lower triangles, packed x packed row-major, for row vectors y: packed(L0 Y) = y T.
+ */
+export function leftProduct(L0: Float64Array, n: number): number[][] {
+  const size = packedSize(n);
+  const T = Array.from({ length: size }, () => new Array<number>(size).fill(0));
+  for (let i = 0; i < n; i++) {
+    for (let k = 0; k <= i; k++) {
+      for (let j = 0; j <= k; j++) T[packedSize(k) + j]![packedSize(i) + j] = L0[i * n + k]!;
+    }
+  }
+  return T;
+}

@@ -36,20 +36,26 @@ interface FlatLayer {
   readonly bias: Float64Array;
 }
 
+const EMPTY = new Float64Array(0);
+
 export function mlpEvaluator(mlp: Mlp): MlpEvaluator {
   const layers = mlp.layers.map(flatten);
   const inputs = layers[0]!.cols;
   const outputs = layers.at(-1)!.rows;
   const widest = Math.max(inputs, ...layers.map((l) => l.rows));
   const values = [new Float64Array(widest), new Float64Array(widest)] as const;
+  let slopes = [EMPTY, EMPTY] as const;
 
   const valueAndTangents: MlpEvaluator["valueAndTangents"] = (s, directions, count, out, tangents) => {
+    if (slopes[0].length < count * widest) {
+      slopes = [new Float64Array(count * widest), new Float64Array(count * widest)];
+    }
     let h = s;
     let t = directions;
     layers.forEach((layer, index) => {
       const last = index === layers.length - 1;
       const next = last ? out : values[(index & 1) as 0 | 1];
-      const nextT = last ? tangents : new Float64Array(count * layer.rows);
+      const nextT = last ? tangents : slopes[(index & 1) as 0 | 1];
       affine(layer, h, next);
       for (let c = 0; c < count; c++) linear(layer, t, c * layer.cols, nextT, c * layer.rows);
       if (!last) {
@@ -71,8 +77,6 @@ export function mlpEvaluator(mlp: Mlp): MlpEvaluator {
     valueAndTangents,
   };
 }
-
-const EMPTY = new Float64Array(0);
 
 function flatten(layer: Layer): FlatLayer {
   return {

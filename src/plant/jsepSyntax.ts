@@ -32,16 +32,19 @@ jsep.hooks.add("gobble-token", function (env) {
 });
 
 jsep.hooks.add("after-token", function (env) {
-  const start = openTokens.get(this)!.pop()!;
-  if (!env.node) return;
-  env.node.start = start;
-  env.node.end = this.index;
-  this.gobbleSpaces();
-  if (this.char !== "^") return;
-  this.index++;
-  const right = this.gobbleToken();
-  if (!right) this.throwError("Expected expression after ^");
-  else env.node = { type: "BinaryExpression", operator: "^", left: env.node, right, start, end: right.end as number };
+  const starts = openTokens.get(this)!;
+  const start = starts.at(-1)!;
+  if (env.node) {
+    env.node.start = start;
+    env.node.end = this.index;
+    this.gobbleSpaces();
+    if (this.char === "^") {
+      this.index++;
+      const right = this.gobbleToken() || this.throwError("Expected expression after ^");
+      env.node = { type: "BinaryExpression", operator: "^", left: env.node, right, start, end: right.end as number };
+    }
+  }
+  starts.pop();
 });
 
 /** The syntax tree, or where and why the text has none. */
@@ -57,11 +60,9 @@ export function parseSyntax(text: string): { node: SyntaxNode } | { offset: numb
 
 /** Offsets of a node's text, [start, end). */
 export function extentOf(node: SyntaxNode): { start: number; end: number } {
-  if (node.type === "BinaryExpression" && typeof node.start !== "number") {
-    const { left, right } = node as jsep.BinaryExpression;
-    return { start: extentOf(left).start, end: extentOf(right).end };
-  }
-  if (node.type === "ConditionalExpression") return extentOf((node as jsep.ConditionalExpression).test);
   const { start, end } = node;
-  return { start: typeof start === "number" ? start : 0, end: typeof end === "number" ? end : 0 };
+  if (typeof start === "number" && typeof end === "number") return { start, end };
+  // an operator without parentheses around it reaches from its first operand to its last
+  const [first, last] = [node.left ?? node.test, node.right ?? node.alternate] as (SyntaxNode | undefined)[];
+  return first && last ? { start: extentOf(first).start, end: extentOf(last).end } : { start: 0, end: 0 };
 }

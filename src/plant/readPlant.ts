@@ -30,7 +30,7 @@ export type PlantResult =
   /** In the order of the file. */
   | { readonly ok: false; readonly problems: readonly Problem[] };
 
-/** `path` is the plant file's own path: log files are named relative to its folder. */
+/** `path` is the plant file's own path, best absolute: log files are resolved against its folder. */
 export function readPlant(text: string, path: string): PlantResult {
   if (text.length > MAX_TEXT) {
     const message = `the plant file has ${text.length} characters; at most ${MAX_TEXT} are allowed`;

@@ -31,17 +31,25 @@ export interface YamlSource {
   textPlace(path: Path, offset: number): { line: number; column: number };
 }
 
+/** Deepest nesting of maps and lists; a plant file needs 6. */
+const MAX_DEPTH = 40;
+
 export function readYaml(text: string): YamlSource {
+  const deep = tooDeep(text);
+  if (deep !== null) return unreadable({ ...deep, message: `maps or lists are nested more than ${MAX_DEPTH} deep` });
   const lines = new LineCounter();
   const document: Document = parseDocument(text, { lineCounter: lines, prettyErrors: false, stringKeys: true });
   const place = (offset: number): { line: number; column: number } => {
     const { line, col } = lines.linePos(Math.min(Math.max(offset, 0), text.length));
     return { line: Math.max(line, 1), column: Math.max(col, 1) };
   };
-  const problems: Problem[] = [...document.errors, ...document.warnings].map((error) => {
-    const message = errorMessage(error, text);
-    return { ...place(error.pos[0]), message };
-  });
+  const problems: Problem[] = [];
+  for (const error of [...document.errors, ...document.warnings]) {
+    const at = place(error.pos[0]);
+    // one mistake can make the parser complain many times at one place
+    if (problems.some(({ line, column }) => line === at.line && column === at.column)) continue;
+    problems.push({ ...at, message: errorMessage(error, text) });
+  }
   const isReadable = document.errors.every((error) => error.code === "DUPLICATE_KEY");
   visit(document, {
     Alias(_, node) {
@@ -78,6 +86,33 @@ export function readYaml(text: string): YamlSource {
       return place(isScalar(node) ? sourceOffset(text, node, offset) : (startOf(node) ?? 0));
     },
   };
+}
+
+/**
+ * Where the text nests deeper than MAX_DEPTH. Found before parsing, because the parser recurses. Brackets in text and
+ * comments count too: more than MAX_DEPTH unclosed ones are refused.
+ */
+function tooDeep(text: string): { line: number; column: number } | null {
+  const indents: number[] = [];
+  let open = 0;
+  for (const [i, line] of text.split("\n").entries()) {
+    const lead = /^[ \t]*([-?:][ \t]+)*/.exec(line)![0];
+    const markers = lead.replace(/[ \t]/g, "").length;
+    const indent = lead.length;
+    while (indents.length > 0 && indents.at(-1)! >= indent) indents.pop();
+    indents.push(indent);
+    for (let column = 0; column < line.length; column++) {
+      if (line[column] === "[" || line[column] === "{") open++;
+      if (line[column] === "]" || line[column] === "}") open = Math.max(0, open - 1);
+      if (open + indents.length + markers > MAX_DEPTH) return { line: i + 1, column: column + 1 };
+    }
+  }
+  return null;
+}
+
+function unreadable(problem: Problem): YamlSource {
+  const place = (): { line: number; column: number } => ({ line: 1, column: 1 });
+  return { value: undefined, problems: [problem], valuePlace: place, keyPlace: place, textPlace: place };
 }
 
 function errorMessage({ code, message, pos }: YAMLError, text: string): string {
