@@ -1,12 +1,12 @@
 /**
  * The learning objective over a batch and its gradient in W and its tangents:
  *
- *   log margin = log T/(1 - e^{-lambda T}) + log max sigma + 1/2 log max c^T W c       (T -> 0: 1/lambda)
- *   + kappa_v mean max(0, 1 + slack - rate / lambda)
- *   + kappa_a max(0, log authority - log limit),    authority = 1/2 R max density(lambda)
+ *   log margin = log Omega(lambda) + log max sigma + 1/2 log max c^T W c,   Omega = T / (1 - e^{-lambda T})  (T = 0: 1/lambda)
+ *   + kappa (max + mean) of max(0, excess(lambda, rho(x)) / 2 + slack lambda) / lambda_ref
  *
- * The gradient of a maximum over states is that of their power mean of high order, so that every near-worst state pulls. A state that fails at
- * lambda has an infinite density: there only the hinge on the rate acts.
+ * rho(x) = 2 limit / (R sqrt(eigmax B^T W^-1 B)), R = Omega max sigma, is the largest gain that the authority limit
+ * allows at x: one condition holds rate and authority at once, and it is finite everywhere. The gradient of a maximum
+ * over states is that of their power mean of high order, so that every near-worst state pulls.
  */
 import type { MetricAdjoint, StateTerms } from "./stateTerms.js";
 
@@ -15,6 +15,8 @@ export interface ObjectiveSettings {
   /** Window of the disturbance bound, s. */
   readonly window: number;
   readonly authorityLimit: number;
+  /** Rate that a violation is measured in, 1/s. */
+  readonly referenceRate: number;
   /** The vector c of the asked margin at a metric, n: the direction of the worst spread. */
   readonly goalVector: (W: Float64Array) => Float64Array;
 }
@@ -31,17 +33,15 @@ export interface BatchValue {
   readonly objective: number;
   /** d objective / d log lambda. */
   readonly rateSlope: number;
-  /** Scaled margin and authority over the batch; authority over the states that contract at lambda. */
+  /** Scaled margin over the batch. */
   readonly margin: number;
-  readonly authority: number;
-  /** Largest lambda - rate over the batch, 1/s; negative when all contract faster. */
+  /** Half of the largest excess over the batch, 1/s: how much slower it must go to hold; negative when all hold. */
   readonly shortfall: number;
 }
 
 const ORDER = 30;
-const SLACK = 0.05;
-const VIOLATION_WEIGHT = 30;
-const AUTHORITY_WEIGHT = 5;
+const SLACK = 0.03;
+const HINGE_WEIGHT = 10;
 
 export function batchObjective(
   terms: StateTerms,
@@ -49,68 +49,69 @@ export function batchObjective(
   lambda: number,
   settings: ObjectiveSettings,
 ): BatchValue {
-  const { wbar, window, authorityLimit, goalVector } = settings;
+  const { wbar, window, authorityLimit, referenceRate, goalVector } = settings;
   const count = members.length;
   const sigmas = new Float64Array(count);
   const spreads = new Float64Array(count);
-  const densities = new Float64Array(count);
+  const gains = new Float64Array(count);
   const goals: Float64Array[] = [];
-  let hinge = 0;
-  let hingeSlope = 0;
-  let shortfall = Number.NEGATIVE_INFINITY;
   members.forEach((member, i) => {
     member.load();
     const c = goalVector(member.W);
     goals.push(c);
     spreads[i] = quadratic(member.W, c);
     sigmas[i] = terms.sigma(wbar);
-    const rate = terms.rate();
-    shortfall = Math.max(shortfall, lambda - rate);
-    const lacking = 1 + SLACK - rate / lambda;
-    if (lacking > 0) {
-      hinge += lacking / count;
-      hingeSlope += rate / lambda / count;
-      terms.addRateGradient(-VIOLATION_WEIGHT / (lambda * count), member.adjoint);
-    }
-    const density = terms.density(lambda);
-    densities[i] = Number.isFinite(density) ? density : 0;
+    gains[i] = terms.inputGain();
   });
-
   const sigma = softMaximum(sigmas);
   const spread = softMaximum(spreads);
-  const density = softMaximum(densities);
-  const windowed = window === 0 ? 1 / lambda : -window / Math.expm1(-lambda * window);
-  const windowedSlope =
-    window === 0 ? -1 : (-lambda * window * Math.exp(-lambda * window)) / -Math.expm1(-lambda * window);
-  const radius = windowed * sigma.value;
-  const authority = (radius * density.value) / 2;
-  const isOverLimit = authority > authorityLimit;
-  const sigmaWeight = 1 + (isOverLimit ? AUTHORITY_WEIGHT : 0);
-  let densitySlope = 0;
+  const omega = window === 0 ? 1 / lambda : -window / Math.expm1(-lambda * window);
+  const omegaSlope = window === 0 ? -1 : (lambda * window * Math.exp(-lambda * window)) / Math.expm1(-lambda * window);
+  const radius = omega * sigma.value;
+
+  const hinges = new Float64Array(count);
+  let worstExcess = Number.NEGATIVE_INFINITY;
+  const rhoOf = (i: number): number => (2 * authorityLimit) / (radius * Math.sqrt(gains[i]!));
   members.forEach((member, i) => {
-    const hasSigma = sigma.weights[i]! > 1e-6;
-    const hasDensity = isOverLimit && density.weights[i]! > 1e-6;
-    if (hasSigma || hasDensity) member.load();
-    if (hasSigma) terms.addSigmaGradient((sigmaWeight * sigma.weights[i]!) / sigmas[i]!, wbar, member.adjoint);
-    addOuter(member.adjoint.W, goals[i]!, (0.5 * spread.weights[i]!) / spreads[i]!);
-    if (hasDensity) {
-      terms.density(lambda);
-      const weight = AUTHORITY_WEIGHT * density.weights[i]!;
-      densitySlope += weight * terms.addLogDensityGradient(weight, member.adjoint);
+    member.load();
+    const excess = terms.excess(lambda, rhoOf(i));
+    worstExcess = Math.max(worstExcess, excess);
+    hinges[i] = Math.max(0, (excess / 2 + SLACK * lambda) / referenceRate);
+  });
+  const hinge = softMaximum(hinges);
+
+  let onLogRadius = 1;
+  let rateSlope = 0;
+  let penalty = HINGE_WEIGHT * hinge.value;
+  members.forEach((member, i) => {
+    const weight = HINGE_WEIGHT * (hinge.weights[i]! + (hinges[i]! > 0 ? 1 / count : 0));
+    penalty += (HINGE_WEIGHT * hinges[i]!) / count;
+    if (weight < 1e-9) return;
+    member.load();
+    const rho = rhoOf(i);
+    terms.excess(lambda, rho);
+    const onExcess = weight / (2 * referenceRate);
+    const slope = terms.addExcessGradient(onExcess, member.adjoint);
+    // log rho = const - log R - 1/2 log gain
+    const onLogRho = onExcess * slope.rho * rho;
+    onLogRadius -= onLogRho;
+    terms.inputGain();
+    terms.addInputGainGradient((-0.5 * onLogRho) / gains[i]!, member.adjoint);
+    rateSlope += onExcess * (slope.lambda + 2 * SLACK) * lambda;
+  });
+  rateSlope += onLogRadius * omegaSlope;
+  members.forEach((member, i) => {
+    if (sigma.weights[i]! > 1e-6) {
+      member.load();
+      terms.addSigmaGradient((onLogRadius * sigma.weights[i]!) / sigmas[i]!, wbar, member.adjoint);
     }
+    addOuter(member.adjoint.W, goals[i]!, (0.5 * spread.weights[i]!) / spreads[i]!);
   });
   const margin = radius * Math.sqrt(spread.value);
-  const overLimit = isOverLimit ? Math.log(authority / authorityLimit) : 0;
-  return {
-    objective: Math.log(margin) + VIOLATION_WEIGHT * hinge + AUTHORITY_WEIGHT * overLimit,
-    rateSlope: sigmaWeight * windowedSlope + VIOLATION_WEIGHT * hingeSlope + lambda * densitySlope,
-    margin,
-    authority,
-    shortfall,
-  };
+  return { objective: Math.log(margin) + penalty, rateSlope, margin, shortfall: worstExcess / 2 };
 }
 
-/** The largest x_i, and d log(power mean of x) / d log(x_i): weights that sum to 1. */
+/** The largest x_i, and its gradient as the power mean's: weights d x_max / d x_i that sum to 1 (to 0 where all are 0). */
 function softMaximum(x: Float64Array): { value: number; weights: Float64Array } {
   const top = x.reduce((a, b) => Math.max(a, b), 0);
   const weights = new Float64Array(x.length);

@@ -20,7 +20,7 @@ import { metricTrainer } from "./metricTrainer.js";
 import { leftProduct, packedSize } from "./packedFactor.js";
 import { type TrainingState, trainingState } from "./trainingState.js";
 
-export interface LearnSettings extends ObjectiveSettings {
+export interface LearnSettings extends Omit<ObjectiveSettings, "referenceRate"> {
   readonly features: readonly Feature[];
   readonly width: number;
   /** Adam steps over all rounds together. */
@@ -68,8 +68,8 @@ const BATCH = 96;
 const HARD_IN_BATCH = 48;
 const HARD_KEPT = 256;
 const LAST_SCALE = 0.02;
-const LEARNING_RATE = 3e-2;
-const RATE_LEARNING_RATE = 3e-2;
+const LEARNING_RATE = 1e-2;
+const RATE_LEARNING_RATE = 1e-2;
 
 export async function learnMetric(
   model: ControlAffineModel,
@@ -103,7 +103,10 @@ export async function learnMetric(
   );
   const hard: TrainingState[] = [];
   const pick = random.stream("batches");
-  const trainer = metricTrainer(engine, net, model, corners, w0, mix, BATCH, settings);
+  const trainer = metricTrainer(engine, net, model, corners, w0, mix, BATCH, {
+    ...settings,
+    referenceRate: settings.rate ?? settings.initialRate,
+  });
   const history: LearnStep[] = [];
 
   let lambda = settings.rate ?? settings.initialRate;
@@ -131,8 +134,7 @@ export async function learnMetric(
       const decay = 0.5 * (1 + Math.cos((Math.PI * done) / total)) + 0.02;
       const value = trainer.step(batch, lambda, LEARNING_RATE * decay);
       if (done % 10 === 0) {
-        const { margin, authority, shortfall } = value;
-        history.push({ round, step: done, rate: lambda, margin, authority, shortfall });
+        history.push({ round, step: done, rate: lambda, margin: value.margin, shortfall: value.shortfall });
       }
       if (settings.rate === null) lambda = trainer.stepRate(lambda, value.rateSlope, RATE_LEARNING_RATE * decay);
       if (step % 25 === 0) {

@@ -4,12 +4,13 @@
  * and eigenvectors", Econometric Theory 1(2), 1985), so no eigen-solver is differentiated.
  *
  *   F(v) = -D(v) + K W + W K^T,  K = A(v) - psidot(v) S + lambda I,  D(v) = dW_f + sum_j v_j dW_bj
+ *   excess(lambda, rho) = max_v eigmax(F(v) - rho B B^T, W): the condition holds at lambda with gain rho where it is <= 0
  *   y^T F y has the gradient  k y^T + y k^T (k = K^T y) in W  and  -v_j y y^T in dW_j (v_0 = 1).
  *
  * Written apart from the verifier on purpose: two implementations, one truth (test/metric/agreement.test.ts).
  */
 import type { BodyFrame } from "../model/controlAffine.js";
-import { argMax, bilinear, cholesky, solveLower, solveLowerTransposed, symmetricEigen, whiten } from "../num/dense.js";
+import { argMax, cholesky, solveLower, solveLowerTransposed, symmetricEigen, whiten } from "../num/dense.js";
 import type { TrainingState } from "./trainingState.js";
 
 /** Adjoints of a scalar in W (n x n) and in each of the m+1 tangents; symmetric. */
@@ -23,16 +24,16 @@ export interface StateTerms {
   load(state: TrainingState, W: Float64Array, tangents: readonly Float64Array[]): boolean;
   /** F(v) at a corner, n x n, newly allocated. */
   conditionMatrix(corner: number, lambda: number): Float64Array;
-  /** Pointwise contraction rate, 1/s. */
-  rate(): number;
-  /** adjoint += weight * d rate; after rate(). */
-  addRateGradient(weight: number, adjoint: MetricAdjoint): void;
+  /** 1/s; positive where the condition fails at lambda with gain rho. */
+  excess(lambda: number, rho: number): number;
+  /** adjoint += weight * d excess; returns d excess / d lambda and d excess / d rho; after excess(). */
+  addExcessGradient(weight: number, adjoint: MetricAdjoint): { readonly lambda: number; readonly rho: number };
   sigma(wbar: Float64Array): number;
   addSigmaGradient(weight: number, wbar: Float64Array, adjoint: MetricAdjoint): void;
-  /** Authority density at lambda; Infinity where the condition fails. */
-  density(lambda: number): number;
-  /** adjoint += weight * d log density; returns d log density / d lambda; after a finite, positive density(). */
-  addLogDensityGradient(weight: number, adjoint: MetricAdjoint): number;
+  /** eigmax(B^T W^{-1} B). */
+  inputGain(): number;
+  /** adjoint += weight * d inputGain; after inputGain(). */
+  addInputGainGradient(weight: number, adjoint: MetricAdjoint): void;
 }
 
 export function stateTerms(
@@ -41,27 +42,18 @@ export function stateTerms(
   frame: BodyFrame | null,
   corners: readonly Float64Array[],
 ): StateTerms {
-  const k = n - m;
   const mat = (rows: number, cols: number): Float64Array => new Float64Array(rows * cols);
   const cholW = mat(n, n);
   const F = mat(n, n);
   const K = mat(n, n);
-  const cholWp = mat(k, k);
-  const block = mat(k, k);
+  const whitened = mat(n, n);
   const eigenvalues = new Float64Array(n);
   const eigenvectors = mat(n, n);
   const row = new Float64Array(n);
-  const PW = mat(k, k);
   let state!: TrainingState;
   let W!: Float64Array;
   let tangents!: readonly Float64Array[];
-  let rateCorner = 0;
-  let rateValue = 0;
-  const rateVector = new Float64Array(n);
-  let densityCorner = 0;
-  let densityRate = 0;
-  let rho = 0;
-  const densityVector = new Float64Array(n);
+  const worst = { corner: 0, lambda: 0, value: 0, vector: new Float64Array(n) };
 
   const load: StateTerms["load"] = (nextState, nextW, nextTangents) => {
     state = nextState;
@@ -104,53 +96,46 @@ export function stateTerms(
     }
   };
 
-  /** out (a x b) = left^T F right for left (n x a), right (n x b). */
-  const project = (
-    S: Float64Array,
-    left: Float64Array,
-    a: number,
-    right: Float64Array,
-    b: number,
-    out: Float64Array,
-  ): void => {
-    for (let j = 0; j < b; j++) {
-      for (let i = 0; i < n; i++) {
-        let sum = 0;
-        for (let l = 0; l < n; l++) sum += S[i * n + l]! * right[l * b + j]!;
-        row[i] = sum;
-      }
-      for (let i = 0; i < a; i++) {
-        let sum = 0;
-        for (let l = 0; l < n; l++) sum += left[l * a + i]! * row[l]!;
-        out[i * b + j] = sum;
-      }
+  /** B^T y squared, summed over the inputs. */
+  const inputEffect = (y: Float64Array): number => {
+    let effect = 0;
+    for (let c = 0; c < m; c++) {
+      let dot = 0;
+      for (let i = 0; i < n; i++) dot += state.point.B[i * m + c]! * y[i]!;
+      effect += dot * dot;
     }
+    return effect;
   };
 
-  const rate = (): number => {
-    const P = state.nullspace;
-    project(W, P, k, P, k, PW);
-    cholesky(PW, cholWp, k);
-    let worst = Number.NEGATIVE_INFINITY;
-    corners.forEach((corner, c) => {
-      assemble(corner, 0);
-      project(F, P, k, P, k, block);
-      whiten(cholWp, block, k, row);
-      symmetricEigen(block, k, eigenvalues, eigenvectors);
-      const top = argMax(eigenvalues, k);
-      if (eigenvalues[top]! <= worst) return;
-      worst = eigenvalues[top]!;
-      rateCorner = c;
-      for (let i = 0; i < k; i++) row[i] = eigenvectors[i * k + top]!;
-      solveLowerTransposed(cholWp, row, k);
+  const excess = (lambda: number, rho: number): number => {
+    const { B } = state.point;
+    worst.lambda = lambda;
+    worst.value = Number.NEGATIVE_INFINITY;
+    for (let c = 0; c < corners.length; c++) {
+      assemble(corners[c]!, lambda);
       for (let i = 0; i < n; i++) {
-        let sum = 0;
-        for (let j = 0; j < k; j++) sum += P[i * k + j]! * row[j]!;
-        rateVector[i] = sum;
+        for (let j = 0; j < n; j++) {
+          let sum = F[i * n + j]!;
+          for (let l = 0; l < m; l++) sum -= rho * B[i * m + l]! * B[j * m + l]!;
+          whitened[i * n + j] = sum;
+        }
       }
-    });
-    rateValue = -worst / 2;
-    return rateValue;
+      whiten(cholW, whitened, n, row);
+      symmetricEigen(whitened, n, eigenvalues, eigenvectors);
+      const top = argMax(eigenvalues, n);
+      if (eigenvalues[top]! <= worst.value) continue;
+      worst.value = eigenvalues[top]!;
+      worst.corner = c;
+      for (let i = 0; i < n; i++) worst.vector[i] = eigenvectors[i * n + top]!;
+      solveLowerTransposed(cholW, worst.vector, n);
+    }
+    return worst.value;
+  };
+
+  const addExcessGradient: StateTerms["addExcessGradient"] = (weight, adjoint) => {
+    // the vector has y^T W y = 1, so the pencil's eigenvalue moves as y^T dF y - value * y^T dW y
+    addQuadraticGradient(worst.vector, corners[worst.corner]!, worst.lambda - worst.value / 2, weight, adjoint);
+    return { lambda: 2, rho: -inputEffect(worst.vector) };
   };
 
   /** adjoint += weight * d(y^T F y) at a corner and rate lambda. */
@@ -218,74 +203,10 @@ export function stateTerms(
     });
   };
 
-  const E = mat(k, m);
-  const X = mat(k, m);
   const S = mat(m, m);
-  const gain = mat(m, m);
-  const cholGain = mat(m, m);
-  const cholC = mat(k, k);
-  const zeta = new Float64Array(m);
-  const density = (lambda: number): number => {
-    const { nullspace: P, range: Q, point } = state;
-    rho = 0;
-    for (let a = 0; a < m; a++) {
-      for (let b = 0; b < m; b++) {
-        let sum = 0;
-        for (let c = 0; c < m; c++) {
-          let qa = 0;
-          let qb = 0;
-          for (let i = 0; i < n; i++) {
-            qa += Q[i * m + a]! * point.B[i * m + c]!;
-            qb += Q[i * m + b]! * point.B[i * m + c]!;
-          }
-          sum += qa * qb;
-        }
-        gain[a * m + b] = sum;
-      }
-    }
-    cholesky(gain, cholGain, m);
-    for (let c = 0; c < corners.length; c++) {
-      assemble(corners[c]!, lambda);
-      project(F, P, k, P, k, block);
-      for (let i = 0; i < k * k; i++) block[i] = -block[i]!;
-      if (!cholesky(block, cholC, k)) return Number.POSITIVE_INFINITY;
-      project(F, P, k, Q, m, E);
-      project(F, Q, m, Q, m, S);
-      for (let j = 0; j < m; j++) {
-        for (let i = 0; i < k; i++) row[i] = E[i * m + j]!;
-        solveLower(cholC, row, k);
-        solveLowerTransposed(cholC, row, k);
-        for (let i = 0; i < k; i++) X[i * m + j] = row[i]!;
-      }
-      for (let a = 0; a < m; a++) {
-        for (let b = 0; b < m; b++) for (let i = 0; i < k; i++) S[a * m + b]! += E[i * m + a]! * X[i * m + b]!;
-      }
-      whiten(cholGain, S, m, row);
-      symmetricEigen(S, m, eigenvalues, eigenvectors);
-      const top = argMax(eigenvalues, m);
-      if (eigenvalues[top]! <= rho) continue;
-      rho = eigenvalues[top]!;
-      densityCorner = c;
-      for (let i = 0; i < m; i++) zeta[i] = eigenvectors[i * m + top]!;
-      solveLowerTransposed(cholGain, zeta, m);
-      for (let i = 0; i < n; i++) {
-        let sum = 0;
-        for (let j = 0; j < m; j++) sum += Q[i * m + j]! * zeta[j]!;
-        for (let l = 0; l < k; l++) {
-          let x = 0;
-          for (let j = 0; j < m; j++) x += X[l * m + j]! * zeta[j]!;
-          sum += P[i * k + l]! * x;
-        }
-        densityVector[i] = sum;
-      }
-    }
-    densityRate = lambda;
-    return rho * Math.sqrt(largestGain());
-  };
-
   const gainVector = new Float64Array(n);
   /** eigmax(B^T W^{-1} B); leaves W^{-1} B s in gainVector, s its unit eigenvector. */
-  const largestGain = (): number => {
+  const inputGain = (): number => {
     const { B } = state.point;
     for (let b = 0; b < m; b++) {
       column(B, m, b, q);
@@ -307,29 +228,14 @@ export function stateTerms(
     return eigenvalues[top]!;
   };
 
-  const addLogDensityGradient: StateTerms["addLogDensityGradient"] = (weight, adjoint) => {
-    let effect = 0;
-    for (let c = 0; c < m; c++) {
-      let dot = 0;
-      for (let i = 0; i < n; i++) dot += state.point.B[i * m + c]! * densityVector[i]!;
-      effect += dot * dot;
-    }
-    const scale = 1 / (effect * rho);
-    addQuadraticGradient(densityVector, corners[densityCorner]!, densityRate, weight * scale, adjoint);
-    const e = largestGain();
-    addOuter(gainVector, -weight / (2 * e), adjoint);
-    return 2 * bilinear(W, densityVector, densityVector, n) * scale;
-  };
-
   return {
     load,
-    rate,
+    excess,
+    addExcessGradient,
     sigma,
     addSigmaGradient,
-    density,
-    addLogDensityGradient,
-    addRateGradient: (weight, adjoint) =>
-      addQuadraticGradient(rateVector, corners[rateCorner]!, rateValue, -weight / 2, adjoint),
+    inputGain,
+    addInputGainGradient: (weight, adjoint) => addOuter(gainVector, -weight, adjoint),
     conditionMatrix: (corner, lambda) => {
       assemble(corners[corner]!, lambda);
       return F.slice();

@@ -3,7 +3,6 @@
  */
 import { type ControlAffineModel, type ModelPoint, newModelPoint } from "../model/controlAffine.js";
 import { type Feature, featureSlope, featureValue } from "../nets/features.js";
-import { rangeAndNull } from "../num/dense.js";
 
 export interface TrainingState {
   /** Network inputs (features) and their derivatives along f, b_1 .. b_m: (m+1) x features. */
@@ -12,9 +11,6 @@ export interface TrainingState {
   readonly point: ModelPoint;
   /** Body spin, rad/s, along f, b_1 .. b_m; zeros without a declared rotation. */
   readonly spin: Float64Array;
-  /** Orthonormal bases of range(B), n x m, and null(B^T), n x (n-m). */
-  readonly range: Float64Array;
-  readonly nullspace: Float64Array;
 }
 
 export function trainingState(
@@ -35,9 +31,6 @@ export function trainingState(
       featureTangents[d * features.length + k] = featureSlope(feature, z[feature.state]!) * along(d, feature.state);
     });
   }
-  const range = new Float64Array(n * m);
-  const nullspace = new Float64Array(n * (n - m));
-  rangeAndNull(point.B, range, nullspace, n, m, new Float64Array(n * n + n * m));
   const { rotation } = model;
   return {
     features: Float64Array.from(features, (feature) => featureValue(feature, z[feature.state]!)),
@@ -46,7 +39,5 @@ export function trainingState(
     spin: Float64Array.from({ length: m + 1 }, (_, d) =>
       rotation === null ? 0 : rotation.headingHalf * along(d, rotation.heading),
     ),
-    range,
-    nullspace,
   };
 }

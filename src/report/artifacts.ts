@@ -139,11 +139,10 @@ export interface ResidualCurve {
 export interface LearningStep {
   readonly round: number;
   readonly step: number;
-  /** 1/s: how far the worst state of the batch is short of the rate. */
+  /** 1/s: how far the worst state of the batch is short of the rate within the authority limit; negative: it holds. */
   readonly shortfall: number;
   /** Asked margin over the batch, in its unit. */
   readonly margin: number;
-  readonly authority: number;
   readonly rate: number;
 }
 
