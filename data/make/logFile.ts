@@ -2,7 +2,18 @@
  * One data set as an Arrow IPC file: float32 columns with their unit in the field's metadata, a row a sample, a run
  * after the other.
  */
-import { Field, Float32, Int16, makeData, RecordBatch, Schema, Struct, Table, tableToIPC, vectorFromArray } from "apache-arrow";
+import {
+  Field,
+  Float32,
+  Int16,
+  makeData,
+  RecordBatch,
+  Schema,
+  Struct,
+  Table,
+  tableToIPC,
+  vectorFromArray,
+} from "apache-arrow";
 import { seededRandom } from "../../src/num/random.js";
 import type { DataSet } from "./dataSets.js";
 import { simulateRun } from "./simulate.js";
@@ -10,7 +21,9 @@ import { simulateRun } from "./simulate.js";
 export function logFile(set: DataSet): Uint8Array {
   const { states, inputs } = set.truth;
   const random = seededRandom(set.seed);
-  const runs = Array.from({ length: set.runs }, (_, r) => simulateRun(set.truth, set.seconds, random.stream(`run ${r}`)));
+  const runs = Array.from({ length: set.runs }, (_, r) =>
+    simulateRun(set.truth, set.seconds, random.stream(`run ${r}`)),
+  );
   const rows = runs.reduce((sum, run) => sum + run.time.length, 0);
   const gather = (of: (run: number, k: number) => number): Float32Array => {
     const out = new Float32Array(rows);
@@ -32,7 +45,10 @@ export function logFile(set: DataSet): Uint8Array {
     ...columns.map(({ name, unit }) => new Field(name, new Float32(), false, new Map([["unit", unit]]))),
   ];
   const schema = new Schema(fields, new Map([["origin", "invented; made by data/make of the Fairlead project"]]));
-  const children = [vectorFromArray(runColumn, new Int16()).data[0]!, ...columns.map(({ values }) => vectorFromArray(values, new Float32()).data[0]!)];
+  const children = [
+    vectorFromArray(runColumn, new Int16()).data[0]!,
+    ...columns.map(({ values }) => vectorFromArray(values, new Float32()).data[0]!),
+  ];
   const data = makeData({ type: new Struct(fields), length: rows, nullCount: 0, children });
   return tableToIPC(new Table(schema, [new RecordBatch(schema, data)]), "file");
 }

@@ -42,7 +42,12 @@ export function orchardRover(soil: RoverSoil): Truth {
         drive! - soil.drag(v) + push!,
       ];
     },
-    start: (random) => [between(random, -8, 8), between(random, -8, 8), between(random, -Math.PI, Math.PI), between(random, 0.6, 2.4)],
+    start: (random) => [
+      between(random, -8, 8),
+      between(random, -8, 8),
+      between(random, -Math.PI, Math.PI),
+      between(random, 0.6, 2.4),
+    ],
     excitation: (random) => {
       const speedGoal = heldDraws(random, [2, 5], () => between(random, 0.55, 2.4));
       const turn = heldDraws(random, [0.6, 2], () => between(random, -0.9, 0.9));

@@ -6,8 +6,17 @@ import type { Random } from "../../src/num/random.js";
 
 /** The truth of one plant. Only the data maker and tests see it. SI. */
 export interface Truth {
-  readonly states: readonly { readonly name: string; readonly unit: string; readonly noise: number; readonly wraps?: boolean }[];
-  readonly inputs: readonly { readonly name: string; readonly unit: string; readonly range: readonly [number, number] }[];
+  readonly states: readonly {
+    readonly name: string;
+    readonly unit: string;
+    readonly noise: number;
+    readonly wraps?: boolean;
+  }[];
+  readonly inputs: readonly {
+    readonly name: string;
+    readonly unit: string;
+    readonly range: readonly [number, number];
+  }[];
   /** Bound of each disturbance channel. */
   readonly disturbance: readonly number[];
   /** xdot(x, u, w). */
@@ -53,17 +62,35 @@ export function simulateRun(truth: Truth, seconds: number, random: Random): Simu
       run.measured[k * n + i] = state.wraps ? wrapped(noisy) : noisy;
     }
     run.inputs.set(u, k * m);
-    run.disturbance.set(w.map((signal) => signal(time)), k * p);
+    run.disturbance.set(
+      w.map((signal) => signal(time)),
+      k * p,
+    );
     for (let s = 0; s < SUBSTEPS; s++) {
       const h = STEP / SUBSTEPS;
-      x = rungeKutta((t, y) => rates(y, u, w.map((signal) => signal(t))), time + s * h, x, h);
+      x = rungeKutta(
+        (t, y) =>
+          rates(
+            y,
+            u,
+            w.map((signal) => signal(t)),
+          ),
+        time + s * h,
+        x,
+        h,
+      );
     }
   }
   return run;
 }
 
 /** One classical Runge-Kutta step. */
-export function rungeKutta(f: (t: number, x: readonly number[]) => number[], t: number, x: readonly number[], h: number): number[] {
+export function rungeKutta(
+  f: (t: number, x: readonly number[]) => number[],
+  t: number,
+  x: readonly number[],
+  h: number,
+): number[] {
   const shifted = (k: readonly number[], scale: number): number[] => x.map((value, i) => value + scale * k[i]!);
   const k1 = f(t, x);
   const k2 = f(t + h / 2, shifted(k1, h / 2));
@@ -80,11 +107,16 @@ function boundedSignal(bound: number, random: Random): (time: number) => number 
     phase: 2 * Math.PI * random.uniform(),
   }));
   const scale = (bound * (0.6 + 0.4 * random.uniform())) / parts.reduce((sum, part) => sum + part.share, 0);
-  return (time) => scale * parts.reduce((sum, part) => sum + part.share * Math.sin(part.frequency * time + part.phase), 0);
+  return (time) =>
+    scale * parts.reduce((sum, part) => sum + part.share * Math.sin(part.frequency * time + part.phase), 0);
 }
 
 /** Holds a draw for a random time between the limits (s), then draws again. */
-export function heldDraws(random: Random, [least, most]: readonly [number, number], draw: () => number): (time: number) => number {
+export function heldDraws(
+  random: Random,
+  [least, most]: readonly [number, number],
+  draw: () => number,
+): (time: number) => number {
   let value = draw();
   let until = least + (most - least) * random.uniform();
   return (time) => {

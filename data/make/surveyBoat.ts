@@ -12,9 +12,19 @@ export interface BoatHull {
   readonly disturbance: readonly [number, number, number];
 }
 
-export const BARE_HULL: BoatHull = { surge: [0.16, 0.8], sway: [1.1, 0.25], yaw: [0.9, 0.35], disturbance: [0.008, 0.006, 0.006] };
+export const BARE_HULL: BoatHull = {
+  surge: [0.16, 0.8],
+  sway: [1.1, 0.25],
+  yaw: [0.9, 0.35],
+  disturbance: [0.008, 0.006, 0.006],
+};
 /** The hardware change: a sensor pod under the keel. More drag, and the couplings move. */
-export const WITH_POD: BoatHull = { surge: [0.24, 1], sway: [1.6, 0.4], yaw: [1.2, 0.55], disturbance: [0.009, 0.007, 0.007] };
+export const WITH_POD: BoatHull = {
+  surge: [0.24, 1],
+  sway: [1.6, 0.4],
+  yaw: [1.2, 0.55],
+  disturbance: [0.009, 0.007, 0.007],
+};
 
 const [MASS, INERTIA] = [120, 50];
 const NOISE = { position: 0.001, heading: 0.0004, speed: 0.001, yawRate: 0.0006 };
@@ -47,7 +57,15 @@ export function surveyBoat(hull: BoatHull): Truth {
       ];
     },
     start: (random) => {
-      const [u, v, r] = boxPoint(random, [[0.6, 2], [-0.35, 0.35], [-0.4, 0.4]], 0.4) as [number, number, number];
+      const [u, v, r] = boxPoint(
+        random,
+        [
+          [0.6, 2],
+          [-0.35, 0.35],
+          [-0.4, 0.4],
+        ],
+        0.4,
+      ) as [number, number, number];
       return [between(random, -15, 15), between(random, -15, 15), between(random, -Math.PI, Math.PI), u, v, r];
     },
     excitation: (random) => {

@@ -33,7 +33,14 @@ export function yardCrane({ rope, damping, disturbance }: CraneHook): Truth {
       return [speed!, a, rate!, -pull / rope - drag + wind!];
     },
     start: (random) => {
-      const [sway, rate] = boxPoint(random, [[-0.36, 0.36], [-0.31, 0.31]], 0.35) as [number, number];
+      const [sway, rate] = boxPoint(
+        random,
+        [
+          [-0.36, 0.36],
+          [-0.31, 0.31],
+        ],
+        0.35,
+      ) as [number, number];
       return [between(random, 8, 22), between(random, -0.8, 0.8), sway, rate];
     },
     excitation: (random) => {
