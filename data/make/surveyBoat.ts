@@ -16,18 +16,18 @@ export const BARE_HULL: BoatHull = {
   surge: [0.16, 0.8],
   sway: [1.1, 0.25],
   yaw: [0.9, 0.35],
-  disturbance: [0.008, 0.006, 0.006],
+  disturbance: [0.004, 0.003, 0.003],
 };
 /** The hardware change: a sensor pod under the keel. More drag, and the couplings move. */
 export const WITH_POD: BoatHull = {
   surge: [0.24, 1],
   sway: [1.6, 0.4],
   yaw: [1.2, 0.55],
-  disturbance: [0.009, 0.007, 0.007],
+  disturbance: [0.005, 0.004, 0.004],
 };
 
 const [MASS, INERTIA] = [120, 50];
-const NOISE = { position: 0.001, heading: 0.0004, speed: 0.001, yawRate: 0.0006 };
+const NOISE = { position: 0.0008, heading: 0.0003, speed: 0.0005, yawRate: 0.0003 };
 
 export function surveyBoat(hull: BoatHull): Truth {
   const crossFlow = (v: number): number => v * Math.hypot(v, 0.05);

@@ -68,7 +68,7 @@ const BATCH = 96;
 const HARD_IN_BATCH = 48;
 const HARD_KEPT = 256;
 const LAST_SCALE = 0.02;
-const LEARNING_RATE = 1e-2;
+const LEARNING_RATE = 3e-2;
 const RATE_LEARNING_RATE = 1e-2;
 
 export async function learnMetric(

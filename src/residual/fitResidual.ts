@@ -12,7 +12,14 @@ import { featuresOf } from "../nets/features.js";
 import type { Random } from "../num/random.js";
 import type { Plant } from "../plant/plant.js";
 import { plantScaling } from "../plant/scaling.js";
-import { durationOf, type PreparedPiece, preparePieces, windowWeights } from "./trainingWindows.js";
+import {
+  balancedWindows,
+  durationOf,
+  type PreparedPiece,
+  preparePieces,
+  type Window,
+  windowWeights,
+} from "./trainingWindows.js";
 
 export interface FitStep {
   readonly step: number;
@@ -45,11 +52,6 @@ const VALIDATION_WINDOWS = 512;
 const CHECK_EVERY = 50;
 const LEARNING_RATE = 1e-2;
 const HUBER = 0.5;
-
-interface Window {
-  readonly piece: PreparedPiece;
-  readonly start: number;
-}
 
 export async function fitResidual(plant: Plant, runs: readonly Run[], services: FitServices): Promise<FittedResidual> {
   const { engine, random, progress, signal } = services;
@@ -116,11 +118,9 @@ export async function fitResidual(plant: Plant, runs: readonly Run[], services: 
       outputScale: outputScales[j]!,
     })),
   });
-  const drawWindow = (pieces: readonly PreparedPiece[]): Window => {
-    const piece = pieces[draw.integer(pieces.length)]!;
-    return { piece, start: draw.integer(piece.count - length) };
-  };
-  const heldOut = Array.from({ length: VALIDATION_WINDOWS }, () => drawWindow(validation));
+  const heldOutWindow = balancedWindows(validation, length);
+  const heldOut = Array.from({ length: VALIDATION_WINDOWS }, () => heldOutWindow(draw));
+  const trainWindow = balancedWindows(train, length);
   const lossOf = (windows: readonly Window[]): number => tf.tidy(() => loss(windows).dataSync()[0]!);
 
   const { steps } = plant.settings.residualNet;
@@ -128,7 +128,7 @@ export async function fitResidual(plant: Plant, runs: readonly Run[], services: 
   let best = { validation: Number.POSITIVE_INFINITY, step: 0, residual: toFile() };
   for (let step = 0; step <= steps; step++) {
     signal?.throwIfAborted();
-    const batch = Array.from({ length: BATCH }, () => drawWindow(train));
+    const batch = Array.from({ length: BATCH }, () => trainWindow(draw));
     if (step % CHECK_EVERY === 0) {
       const checked = { step, train: lossOf(batch), validation: lossOf(heldOut) };
       history.push(checked);

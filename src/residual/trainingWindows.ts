@@ -6,14 +6,19 @@
  */
 import type { Run } from "../logs/recording.js";
 import { type Feature, featureValue } from "../nets/features.js";
+import type { Random } from "../num/random.js";
 import { newRatesPoint, type Plant } from "../plant/plant.js";
 import type { Scaling } from "../plant/scaling.js";
+
+const CELLS = 5;
 
 /** One piece, prepared once: windows are cut from it by start index. */
 export interface PreparedPiece {
   readonly count: number;
   /** Step lengths, N - 1. */
   readonly steps: Float64Array;
+  /** Cell of each sample on a coarse grid over the states that the unknown terms depend on. */
+  readonly cells: Int32Array;
   /** Running sum of (dx - prior step integral) per unknown rate: N x rates, SI. */
   readonly unexplained: Float64Array;
   /** Per term: features N x F, and the input it is multiplied by (1 for a rate), held, N. */
@@ -29,6 +34,7 @@ export function preparePieces(
 ): PreparedPiece[] {
   const [n, m, p] = [plant.states.length, plant.inputs.length, plant.leftover.length];
   const points = [newRatesPoint(n, m, p), newRatesPoint(n, m, p)] as const;
+  const seenStates = [...new Set(plant.unknowns.flatMap((term) => term.dependsOn))];
   return runs.flatMap((run) =>
     run.pieces.map(({ time, states, inputs }): PreparedPiece => {
       const count = time.length;
@@ -47,6 +53,12 @@ export function preparePieces(
           unexplained[(k + 1) * rates.length + r] = unexplained[k * rates.length + r]! + moved - steps[k]! * rate;
         }
       }
+      const cells = Int32Array.from({ length: count }, (_, k) =>
+        seenStates.reduce((cell, i) => {
+          const z = (states[k * n + i]! - scaling.stateCenter[i]!) / scaling.stateHalf[i]!;
+          return cell * CELLS + Math.min(CELLS - 1, Math.max(0, Math.floor(((z + 1) / 2) * CELLS)));
+        }, 0),
+      );
       const terms = plant.unknowns.map(({ input }, j) => {
         const seen = features[j]!;
         const values = new Float32Array(count * seen.length);
@@ -60,7 +72,7 @@ export function preparePieces(
         const factor = Float64Array.from({ length: count }, (_, k) => (input === null ? 1 : inputs[k * m + input]!));
         return { features: values, factor };
       });
-      return { count, steps, unexplained, terms };
+      return { count, steps, cells, unexplained, terms };
     }),
   );
 }
@@ -89,4 +101,30 @@ export function windowWeights(
     out[offset + k]! += half;
     out[offset + k + 1]! += half;
   }
+}
+
+export interface Window {
+  readonly piece: PreparedPiece;
+  readonly start: number;
+}
+
+/**
+ * Draws windows of `length` steps evenly over the cells that their first samples lie in, so that a corner of the
+ * envelope that few runs visit weighs as much as its middle.
+ */
+export function balancedWindows(pieces: readonly PreparedPiece[], length: number): (random: Random) => Window {
+  const byCell = new Map<number, Window[]>();
+  for (const piece of pieces) {
+    for (let start = 0; start + length < piece.count; start++) {
+      const cell = piece.cells[start]!;
+      const held = byCell.get(cell);
+      if (held === undefined) byCell.set(cell, [{ piece, start }]);
+      else held.push({ piece, start });
+    }
+  }
+  const cells = [...byCell.keys()].sort((a, b) => a - b).map((cell) => byCell.get(cell)!);
+  return (random) => {
+    const cell = cells[random.integer(cells.length)]!;
+    return cell[random.integer(cell.length)]!;
+  };
 }
