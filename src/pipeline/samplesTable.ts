@@ -43,16 +43,26 @@ export function samplesColumns(plant: Plant, split: SplitRuns): Column[] {
 }
 
 /** The inverse of samplesColumns. */
-export function splitFromColumns(plant: Plant, columns: ReadonlyMap<string, Float64Array | readonly string[]>): SplitRuns {
+export function splitFromColumns(
+  plant: Plant,
+  columns: ReadonlyMap<string, Float64Array | readonly string[]>,
+): SplitRuns {
   const text = (name: string): readonly string[] => columns.get(name) as readonly string[];
   const numbers = (name: string): Float64Array => columns.get(name) as Float64Array;
-  const [parts, files, ids, pieces, time] = [text("part"), text("file"), text("run"), numbers("piece"), numbers("time")];
+  const [parts, files, ids, pieces, time] = [
+    text("part"),
+    text("file"),
+    text("run"),
+    numbers("piece"),
+    numbers("time"),
+  ];
   const states = plant.states.map((state) => numbers(state.name));
   const inputs = plant.inputs.map((input) => numbers(input.name));
   const split: Record<Part, Run[]> = { fit: [], calibration: [], test: [] };
   const rowMajor = (series: readonly Float64Array[], from: number, to: number): Float64Array => {
     const out = new Float64Array((to - from) * series.length);
-    for (let k = from; k < to; k++) for (const [i, values] of series.entries()) out[(k - from) * series.length + i] = values[k]!;
+    for (let k = from; k < to; k++)
+      for (const [i, values] of series.entries()) out[(k - from) * series.length + i] = values[k]!;
     return out;
   };
   let from = 0;
@@ -66,7 +76,11 @@ export function splitFromColumns(plant: Plant, columns: ReadonlyMap<string, Floa
       open = { key, pieces: [] };
       split[part].push({ id: ids[from]!, file: files[from]!, pieces: open.pieces });
     }
-    open.pieces.push({ time: time.slice(from, k), states: rowMajor(states, from, k), inputs: rowMajor(inputs, from, k) });
+    open.pieces.push({
+      time: time.slice(from, k),
+      states: rowMajor(states, from, k),
+      inputs: rowMajor(inputs, from, k),
+    });
     from = k;
   }
   return split;
