@@ -12,7 +12,6 @@ import {
   Struct,
   Table,
   tableToIPC,
-  vectorFromArray,
 } from "apache-arrow";
 import { seededRandom } from "../../src/num/random.js";
 import type { DataSet } from "./dataSets.js";
@@ -46,8 +45,8 @@ export function logFile(set: DataSet): Uint8Array {
   ];
   const schema = new Schema(fields, new Map([["origin", "invented; made by data/make of the Fairlead project"]]));
   const children = [
-    vectorFromArray(runColumn, new Int16()).data[0]!,
-    ...columns.map(({ values }) => vectorFromArray(values, new Float32()).data[0]!),
+    makeData({ type: new Int16(), length: rows, nullCount: 0, data: runColumn }),
+    ...columns.map(({ values }) => makeData({ type: new Float32(), length: rows, nullCount: 0, data: values })),
   ];
   const data = makeData({ type: new Struct(fields), length: rows, nullCount: 0, children });
   return tableToIPC(new Table(schema, [new RecordBatch(schema, data)]), "file");
