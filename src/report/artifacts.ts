@@ -18,6 +18,7 @@ export interface Summary {
   readonly verdict: Verdict;
   readonly states: readonly NamedUnit[];
   readonly inputs: readonly NamedUnit[];
+  /** The asked margin. name: its key in every certificate's margins; direction: the same in words for a reader. */
   readonly goal: NamedUnit & { readonly direction: string };
   readonly disturbance: DisturbanceSummary;
   readonly residual: { readonly channels: readonly ResidualChannel[] };
@@ -91,7 +92,10 @@ export interface CertificateSummary {
   /** Upper limit of the volume share where any claim fails; null when not counted. */
   readonly failingShareUpper: number | null;
   readonly counted: { readonly points: number; readonly failures: number; readonly confidence: number } | null;
-  /** By state name; with a rotation also across, along and planar (unit of the position). Empty without a tube. */
+  /**
+   * By state name; with a rotation also across, along and planar, in the unit of the position pair, whose own margins
+   * equal planar. Empty without a tube.
+   */
   readonly margins: Readonly<Record<string, number>>;
   /** Share of the half-range by input name. */
   readonly authority: Readonly<Record<string, number>>;
@@ -159,6 +163,9 @@ export interface CertificatePicture {
   /** Margin in the goal's unit. */
   readonly tradeOff: readonly TradeOffPoint[];
   readonly authorityLimit: number;
-  /** Largest across/along extent for the drawing of the tube around a path: body-frame position block R^2 W, in the goal's unit squared, [xx, xy, yy]; null without rotation or tube. */
+  /**
+   * Largest extent along and across the heading, for the drawing of the tube around a path: body-frame position block of
+   * R^2 W as [xx, xy, yy], in the position's unit squared; null without a rotation or a tube.
+   */
   readonly footprint: readonly [number, number, number] | null;
 }
