@@ -38,12 +38,13 @@ export interface TrainableMlp {
 
 export function trainableMlp(tf: typeof Tf, mlp: Mlp): TrainableMlp {
   // kept as [in, out], so that a batch of rows multiplies from the left
-  const layers = mlp.layers.map((layer) => ({
-    weights: tf.variable(
-      tf.tidy(() => tf.transpose(tf.tensor2d(layer.weights.map((row) => [...row])))),
-    ) as Tf.Variable<Tf.Rank.R2>,
-    bias: tf.variable(tf.tensor1d([...layer.bias])) as Tf.Variable<Tf.Rank.R1>,
-  }));
+  const layers = mlp.layers.map((layer) =>
+    // a tidy keeps its variables and frees what they were made from
+    tf.tidy(() => ({
+      weights: tf.variable(tf.transpose(tf.tensor2d(layer.weights.map((row) => [...row])))) as Tf.Variable<Tf.Rank.R2>,
+      bias: tf.variable(tf.tensor1d([...layer.bias])) as Tf.Variable<Tf.Rank.R1>,
+    })),
+  );
   const isLast = (l: number): boolean => l === layers.length - 1;
   const value = (x: Tf.Tensor2D): Tf.Tensor2D =>
     layers.reduce<Tf.Tensor2D>((h, { weights, bias }, l) => {
