@@ -1,7 +1,8 @@
 /**
  * Fits the unknown terms: one small tanh network each, trained together over windows of the fit runs (trainingWindows),
- * Huber loss (Huber, Ann. Math. Stat. 35(1), 1964) on errors in units of the prior's own windowed error, Adam with a
- * cosine-decaying rate, the best weights on the validation runs kept.
+ * Huber loss (Huber, Ann. Math. Stat. 35(1), 1964) on errors in units of the prior's own, Adam (Kingma and Ba, ICLR 2015)
+ * with a cosine-decaying rate, the best weights on the validation runs kept. The networks start as zero: the first
+ * candidate is the prior itself.
  */
 import type * as Tf from "@tensorflow/tfjs-core";
 import type { Engine } from "../engine/openEngine.js";
@@ -14,26 +15,34 @@ import type { Plant } from "../plant/plant.js";
 import { plantScaling } from "../plant/scaling.js";
 import {
   balancedWindows,
-  durationOf,
-  type PreparedPiece,
+  nodeWeights,
   preparePieces,
   type Window,
-  windowWeights,
+  type WindowShape,
+  windowShape,
+  windowTarget,
 } from "./trainingWindows.js";
 
 export interface FitStep {
   readonly step: number;
-  /** Mean Huber loss, in units of the prior's error squared. */
+  /** Mean Huber loss of a batch and of the validation windows, in units of the prior's error squared. */
   readonly train: number;
   readonly validation: number;
 }
 
 export interface FittedResidual {
+  /**
+   * improved: better than the prior on the validation runs. noBetterThanPrior: no step was, and the terms are zero; look
+   * at the unknown terms and their states in the plant file, or at the logs. nothingUnknown: the plant declares no term.
+   */
+  readonly status: "improved" | "noBetterThanPrior" | "nothingUnknown";
   readonly residual: ResidualFile;
+  /** Step 0 is the prior. */
   readonly history: readonly FitStep[];
   /** Step whose weights are kept. */
   readonly bestStep: number;
-  readonly fitRuns: number;
+  /** Runs that the weights were trained on, and runs that chose among them. */
+  readonly trainingRuns: number;
   readonly validationRuns: number;
 }
 
@@ -44,153 +53,183 @@ export interface FitServices {
   readonly signal?: AbortSignal | undefined;
 }
 
-/** Windows of the fit, in samples' steps: half a second at 50 Hz. Short ones are noisier, not biased. */
-const WINDOW_SECONDS = 0.5;
+/** s. Long enough to average the sensor noise of its two ends, short enough that a window stays near one state. */
+const WINDOW = 0.5;
+/** s between the nodes at which a network is read. */
+const NODE_SPACING = 0.1;
 const BATCH = 64;
 const VALIDATION_SHARE = 0.2;
 const VALIDATION_WINDOWS = 512;
 const CHECK_EVERY = 50;
 const LEARNING_RATE = 1e-2;
+/** Where the loss turns from square to linear, in units of the prior's error. */
 const HUBER = 0.5;
 
+/** Throws when the fit runs hold no window, and when `signal` aborts. */
 export async function fitResidual(plant: Plant, runs: readonly Run[], services: FitServices): Promise<FittedResidual> {
-  const { engine, random, progress, signal } = services;
-  const { tf } = engine;
-  const { unknowns } = plant;
-  if (unknowns.length === 0)
-    return { residual: { terms: [] }, history: [], bestStep: 0, fitRuns: runs.length, validationRuns: 0 };
+  const { random, signal, progress } = services;
+  const { tf } = services.engine;
+  if (plant.unknowns.length === 0) {
+    const none = { residual: { terms: [] }, history: [], bestStep: 0, trainingRuns: 0, validationRuns: 0 };
+    return { status: "nothingUnknown", ...none };
+  }
+  const windows = fitWindows(plant, runs, random);
+  const networks = termNetworks(tf, plant, windows, random);
+  const optimizer = tf.train.adam(LEARNING_RATE);
+  const draw = random.stream("windows");
+  const heldOut = Array.from({ length: VALIDATION_WINDOWS }, () => windows.validation(draw));
+  const lossOf = (batch: readonly Window[]): number => tf.tidy(() => networks.loss(batch).dataSync()[0]!);
+  const { steps } = plant.settings.residualNet;
+  const history: FitStep[] = [];
+  let best = { validation: Number.POSITIVE_INFINITY, step: 0, residual: networks.toFile() };
+  try {
+    for (let step = 0; step <= steps; step++) {
+      signal?.throwIfAborted();
+      const batch = Array.from({ length: BATCH }, () => windows.train(draw));
+      if (step % CHECK_EVERY === 0 || step === steps) {
+        const validation = lossOf(heldOut);
+        history.push({ step, train: lossOf(batch), validation });
+        if (validation < best.validation) best = { validation, step, residual: networks.toFile() };
+        progress(step, steps, `validation ${validation.toPrecision(3)}`);
+        await new Promise((resolve) => setImmediate(resolve));
+      }
+      tf.tidy(() => {
+        const { grads } = tf.variableGrads(() => networks.loss(batch), networks.variables);
+        const decay = 0.01 + 0.495 * (1 + Math.cos((Math.PI * step) / steps));
+        // tfjs keeps Adam's rate in a protected field; a decaying rate is the usual reason to set it
+        (optimizer as object as { learningRate: number }).learningRate = LEARNING_RATE * decay;
+        optimizer.applyGradients(grads as Parameters<typeof optimizer.applyGradients>[0]);
+      });
+    }
+  } finally {
+    optimizer.dispose();
+    networks.dispose();
+  }
+  return {
+    status: best.step > 0 ? "improved" : "noBetterThanPrior",
+    residual: best.residual,
+    history,
+    bestStep: best.step,
+    trainingRuns: windows.trainingRuns,
+    validationRuns: windows.validationRuns,
+  };
+}
+
+interface FitWindows {
+  readonly shape: WindowShape;
+  /** States with an unknown term; scales: the size of the prior's error there, SI per second. */
+  readonly rates: readonly number[];
+  readonly scales: readonly number[];
+  readonly train: (random: Random) => Window;
+  readonly validation: (random: Random) => Window;
+  readonly trainingRuns: number;
+  readonly validationRuns: number;
+}
+
+function fitWindows(plant: Plant, runs: readonly Run[], random: Random): FitWindows {
   const scaling = plantScaling(plant);
-  const features = unknowns.map((term) => featuresOf(plant, term.dependsOn));
-  const rates = [...new Set(unknowns.map((term) => term.state))];
+  const features = plant.unknowns.map((term) => featuresOf(plant, term.dependsOn));
+  const rates = [...new Set(plant.unknowns.map((term) => term.state))];
   const order = random.stream("validation").permutation(runs.length);
   const validationRuns = Math.max(1, Math.round(VALIDATION_SHARE * runs.length));
-  const pick = (indices: readonly number[]): PreparedPiece[] =>
+  const [held, trained] = [order.slice(0, validationRuns), order.slice(validationRuns)].map((indices) =>
     preparePieces(
       plant,
       scaling,
       indices.map((i) => runs[i]!),
       rates,
       features,
+    ),
+  ) as [ReturnType<typeof preparePieces>, ReturnType<typeof preparePieces>];
+  const steps = trained.flatMap(({ time }) => Array.from(time.subarray(1), (t, k) => t - time[k]!));
+  steps.sort((a, b) => a - b);
+  const shape = windowShape(steps[steps.length >> 1] ?? WINDOW, WINDOW, NODE_SPACING);
+  const train = balancedWindows(trained, shape);
+  const validation = balancedWindows(held, shape);
+  if (train === null || validation === null) {
+    throw new Error(
+      `${runs.length} fit runs hold no stretch of ${WINDOW} s without a gap in ` +
+        `${train === null ? "the part to train on" : "the part to validate on"}; ` +
+        "give at least two longer runs, or raise logs.maxGap if the gaps are harmless",
     );
-  const trainPieces = pick(order.slice(validationRuns));
-  const length = stepsPerWindow(trainPieces, WINDOW_SECONDS);
-  const usable = (pieces: readonly PreparedPiece[]): PreparedPiece[] => pieces.filter((piece) => piece.count > length);
-  const train = usable(trainPieces);
-  const validation = usable(pick(order.slice(0, validationRuns)));
-  const draw = random.stream("windows");
-  const scales = priorScales(train, rates.length, length);
-  const inputScale = unknowns.map(({ input }) => (input === null ? 1 : scaling.inputHalf[input]!));
-  const outputScales = unknowns.map(({ state }, j) => scales[rates.indexOf(state)]! / inputScale[j]!);
-
-  const width = plant.settings.residualNet.width;
-  const nets = unknowns.map((_, j) =>
-    trainableMlp(tf, initialMlp([features[j]!.length, width, width, 1], random.stream(`term ${j}`), 0.1)),
-  );
-  const optimizer = tf.train.adam(LEARNING_RATE);
-  const loss = (windows: readonly Window[]): Tf.Scalar => {
-    const predicted: Tf.Tensor2D[][] = rates.map(() => []);
-    unknowns.forEach(({ state }, j) => {
-      const { x, q } = termBatch(windows, j, features[j]!.length, length);
-      const y = tf.reshape(nets[j]!.value(tf.tensor2d(x, [windows.length * (length + 1), features[j]!.length])), [
-        windows.length,
-        length + 1,
-      ]);
-      const weighted = tf.mul(y, tf.tensor2d(q, [windows.length, length + 1]));
-      const mean = tf.sum(tf.mul(weighted, outputScales[j]!), 1, true) as Tf.Tensor2D;
-      predicted[rates.indexOf(state)]!.push(mean);
+  }
+  const scales = rates.map((_, r) => {
+    const errors = trained.flatMap((piece) => {
+      const starts = Math.max(0, Math.floor((piece.time.length - 1) / shape.length));
+      return Array.from({ length: starts }, (_, i) =>
+        Math.abs(windowTarget({ piece, start: i * shape.length }, r, rates.length, shape)),
+      );
     });
-    const errors = predicted.map((parts, r) => {
-      const target = targets(windows, r, rates.length, length);
-      const total = parts.reduce((a, b) => tf.add(a, b));
-      return tf.div(tf.sub(total, tf.tensor2d(target, [windows.length, 1])), scales[r]!);
+    return robustScale(errors);
+  });
+  return { shape, rates, scales, train, validation, trainingRuns: runs.length - validationRuns, validationRuns };
+}
+
+/** The 90 % quantile of the absolute errors: an outlier in the log does not move it, an error in one corner is seen. */
+function robustScale(errors: number[]): number {
+  errors.sort((a, b) => a - b);
+  const scale = errors[Math.floor(0.9 * (errors.length - 1))]!;
+  return scale > 0 ? scale : 1;
+}
+
+/** The networks of all terms as one: their loss over windows, their weights, their saved form. */
+function termNetworks(tf: typeof Tf, plant: Plant, { shape, rates, scales }: FitWindows, random: Random) {
+  const { unknowns } = plant;
+  const { width } = plant.settings.residualNet;
+  const { inputHalf } = plantScaling(plant);
+  const nodes = shape.length / shape.stride + 1;
+  const terms = unknowns.map((term, j) => {
+    const features = featuresOf(plant, term.dependsOn);
+    return {
+      features,
+      rate: rates.indexOf(term.state),
+      outputScale: scales[rates.indexOf(term.state)]! / (term.input === null ? 1 : inputHalf[term.input]!),
+      net: trainableMlp(tf, initialMlp([features.length, width, width, 1], random.stream(`term ${j}`), 0)),
+    };
+  });
+  /** Part of the mean rate of one term over each window: [windows, 1], SI per second. */
+  const meanOf = (windows: readonly Window[], j: number): Tf.Tensor2D => {
+    const { features, net, outputScale } = terms[j]!;
+    const F = features.length;
+    const x = new Float32Array(windows.length * nodes * F);
+    const q = new Float32Array(windows.length * nodes);
+    windows.forEach((window, i) => {
+      const from = window.piece.terms[j]!.features;
+      for (let c = 0; c < nodes; c++) {
+        const k = window.start + c * shape.stride;
+        for (let f = 0; f < F; f++) x[(i * nodes + c) * F + f] = from[k * F + f]!;
+      }
+      nodeWeights(window, j, shape, q, i * nodes);
+    });
+    const y = tf.reshape(net.value(tf.tensor2d(x, [windows.length * nodes, F])), [windows.length, nodes]);
+    return tf.mul(tf.sum(tf.mul(y, tf.tensor2d(q, [windows.length, nodes])), 1, true), outputScale) as Tf.Tensor2D;
+  };
+  const loss = (windows: readonly Window[]): Tf.Scalar => {
+    const errors = rates.map((_, r) => {
+      const target = Float32Array.from(windows, (window) => windowTarget(window, r, rates.length, shape));
+      const predicted = terms.flatMap(({ rate }, j) => (rate === r ? [meanOf(windows, j)] : []));
+      const left = tf.sub(
+        tf.tensor2d(target, [windows.length, 1]),
+        predicted.reduce((a, b) => tf.add(a, b)),
+      );
+      return tf.mul(left, 1 / scales[r]!);
     });
     const size = tf.abs(tf.concat(errors, 1));
     const inner = tf.minimum(size, HUBER);
-    return tf.mean(tf.add(tf.mul(0.5, tf.square(inner)), tf.mul(HUBER, tf.sub(size, inner)))) as Tf.Scalar;
+    const huber = tf.add(tf.mul(0.5, tf.square(inner)), tf.mul(HUBER, tf.sub(size, inner)));
+    return tf.mul(tf.sum(huber), 1 / (windows.length * rates.length)) as Tf.Scalar;
   };
-  const variables = nets.flatMap((net) => net.variables);
-  const toFile = (): ResidualFile => ({
-    terms: unknowns.map(({ state, input }, j) => ({
-      state,
-      input,
-      features: features[j]!,
-      mlp: nets[j]!.toMlp(),
-      outputScale: outputScales[j]!,
-    })),
-  });
-  const heldOutWindow = balancedWindows(validation, length);
-  const heldOut = Array.from({ length: VALIDATION_WINDOWS }, () => heldOutWindow(draw));
-  const trainWindow = balancedWindows(train, length);
-  const lossOf = (windows: readonly Window[]): number => tf.tidy(() => loss(windows).dataSync()[0]!);
-
-  const { steps } = plant.settings.residualNet;
-  const history: FitStep[] = [];
-  let best = { validation: Number.POSITIVE_INFINITY, step: 0, residual: toFile() };
-  for (let step = 0; step <= steps; step++) {
-    signal?.throwIfAborted();
-    const batch = Array.from({ length: BATCH }, () => trainWindow(draw));
-    if (step % CHECK_EVERY === 0) {
-      const checked = { step, train: lossOf(batch), validation: lossOf(heldOut) };
-      history.push(checked);
-      if (checked.validation < best.validation) best = { validation: checked.validation, step, residual: toFile() };
-      progress(step, steps, `validation ${checked.validation.toPrecision(3)}`);
-      await new Promise((resolve) => setImmediate(resolve));
-    }
-    const decay = 0.5 * (1 + Math.cos((Math.PI * step) / steps)) + 0.01;
-    tf.tidy(() => {
-      const { grads } = tf.variableGrads(() => loss(batch), variables);
-      (optimizer as object as { learningRate: number }).learningRate = LEARNING_RATE * decay;
-      optimizer.applyGradients(grads as Parameters<typeof optimizer.applyGradients>[0]);
-    });
-  }
-  optimizer.dispose();
-  for (const net of nets) net.dispose();
   return {
-    residual: best.residual,
-    history,
-    bestStep: best.step,
-    fitRuns: runs.length - validationRuns,
-    validationRuns,
+    loss,
+    variables: terms.flatMap(({ net }) => net.variables),
+    toFile: (): ResidualFile => ({
+      terms: unknowns.map(({ state, input }, j) => {
+        const { features, net, outputScale } = terms[j]!;
+        return { state, input, features, mlp: net.toMlp(), outputScale };
+      }),
+    }),
+    dispose: (): void => {
+      for (const { net } of terms) net.dispose();
+    },
   };
-}
-
-/** Steps of a window of about `seconds`, from the median step of the pieces. */
-function stepsPerWindow(pieces: readonly PreparedPiece[], seconds: number): number {
-  const steps = pieces.flatMap((piece) => Array.from(piece.steps.subarray(0, 100))).sort((a, b) => a - b);
-  return Math.max(2, Math.round(seconds / steps[steps.length >> 1]!));
-}
-
-/** Root mean square of the prior's windowed error per unknown rate, SI per second. */
-function priorScales(pieces: readonly PreparedPiece[], rates: number, length: number): number[] {
-  return Array.from({ length: rates }, (_, r) => {
-    let sum = 0;
-    let count = 0;
-    for (const piece of pieces) {
-      for (let start = 0; start + length < piece.count; start += length) {
-        const moved = piece.unexplained[(start + length) * rates + r]! - piece.unexplained[start * rates + r]!;
-        sum += (moved / durationOf(piece, start, length)) ** 2;
-        count++;
-      }
-    }
-    return Math.sqrt(sum / count);
-  });
-}
-
-function targets(windows: readonly Window[], r: number, rates: number, length: number): Float32Array {
-  return Float32Array.from(windows, ({ piece, start }) => {
-    const moved = piece.unexplained[(start + length) * rates + r]! - piece.unexplained[start * rates + r]!;
-    return moved / durationOf(piece, start, length);
-  });
-}
-
-/** Features (windows * (length + 1)) x F and trapezoid weights windows x (length + 1) of one term. */
-function termBatch(windows: readonly Window[], term: number, features: number, length: number) {
-  const x = new Float32Array(windows.length * (length + 1) * features);
-  const q = new Float32Array(windows.length * (length + 1));
-  windows.forEach(({ piece, start }, i) => {
-    const from = piece.terms[term]!.features;
-    x.set(from.subarray(start * features, (start + length + 1) * features), i * (length + 1) * features);
-    windowWeights(piece, term, start, length, durationOf(piece, start, length), q, i * (length + 1));
-  });
-  return { x, q };
 }
