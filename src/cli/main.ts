@@ -19,7 +19,10 @@ export interface Streams {
   readonly err: NodeJS.WriteStream;
 }
 
-export async function main(args: readonly string[], streams: Streams = process): Promise<ExitStatus> {
+export async function main(
+  args: readonly string[],
+  streams: Streams = { out: process.stdout, err: process.stderr },
+): Promise<ExitStatus> {
   let status: ExitStatus = 0;
   const stop = new AbortController();
   const onInterrupt = (): void => {

@@ -1,5 +1,6 @@
 /** `fairlead run` and the single stages: read the plant file, run the job, print the verdict. */
 import { readFileSync } from "node:fs";
+import { availableParallelism } from "node:os";
 import { resolve } from "node:path";
 import { type JobOutcome, runJob, runOneStage } from "../pipeline/job.js";
 import { openRunFolder, type RunFolder } from "../pipeline/runFolder.js";
@@ -72,6 +73,7 @@ function job(loaded: LoadedPlant, folder: RunFolder, options: { seed?: number | 
     folder,
     seed: options.seed ?? loaded.plant.settings.seed,
     runtime: `node ${process.version}`,
+    workers: availableParallelism(),
     signal,
   };
 }

@@ -18,7 +18,10 @@ export interface Intake {
   readonly jitter: number;
 }
 
-export async function intakeLogs(plant: Plant): Promise<Intake> {
+export async function intakeLogs(
+  plant: Plant,
+  progress: (done: number, total: number, note: string) => void = () => undefined,
+): Promise<Intake> {
   const { logs } = plant;
   const wanted: WantedColumns = {
     numbers: [...new Set([logs.time, ...logs.states, ...logs.inputs].map(({ column }) => column))],
@@ -27,7 +30,8 @@ export async function intakeLogs(plant: Plant): Promise<Intake> {
   const runs: Run[] = [];
   const findings: Finding[] = [];
   const files: { path: string; rows: number; runs: number }[] = [];
-  for (const path of logs.files) {
+  for (const [done, path] of logs.files.entries()) {
+    progress(done, logs.files.length, path);
     const table = await readTable(path, wanted);
     const cut = cutRuns(plant, table);
     runs.push(...cut.runs);

@@ -5,14 +5,15 @@
 import type { ControlAffineModel } from "../model/controlAffine.js";
 import { type DualMetricFile, dualMetric } from "../nets/dualMetric.js";
 import type { Random } from "../num/random.js";
-import type { MarginGoal } from "../plant/plant.js";
+import type { MarginGoal, Plant } from "../plant/plant.js";
 import { type CertificateExtremes, chooseRate, type RateChoice, type TradeOffPoint } from "../tube/chooseRate.js";
 import { tubeRadius } from "../tube/tube.js";
 import { type CountedEvidence, countFailures } from "../verify/counted.js";
 import { type MarginDirection, spread } from "../verify/spread.js";
 import { type Survey, survey } from "../verify/survey.js";
 
-export interface CertifyRequest {
+/** What a tube is asked for. */
+export interface TubeQuestion {
   /** Bound of each leftover channel, SI. */
   readonly wbar: Float64Array;
   readonly window: number;
@@ -20,7 +21,14 @@ export interface CertifyRequest {
   readonly authorityLimit: number;
   readonly initialDistance: number;
   readonly rate: number | null;
-  readonly random: Random;
+}
+
+export function tubeQuestion(
+  { settings }: Plant,
+  { wbar, window }: Pick<TubeQuestion, "wbar" | "window">,
+): TubeQuestion {
+  const { goal, authorityLimit, initialDistance, rate } = settings;
+  return { wbar, window, goal, authorityLimit, initialDistance, rate };
 }
 
 export interface Certification {
@@ -37,29 +45,47 @@ export interface CertifiedTube {
   readonly sigma: number;
   readonly authority: number;
   readonly authorityDensity: number;
-  /** sup of c^T W c by direction name: the states by index, planar, along, across. */
+  /** The slowest pointwise rate that is claimed, 1/s: above `rate`. */
+  readonly claimedRate: number;
+  /** Claimed sup of c^T W c: the states in order, then planar, along and across where a rotation is declared. */
   readonly spreads: readonly { readonly direction: MarginDirection; readonly value: number }[];
   readonly headingError: number;
 }
 
 const SURVEY = { points: 4096, starts: 8 };
-/** A sampled supremum may miss the true one by a little: every one enters the tube this much worse. */
+/** A sampled supremum may miss the true one by a little: every one enters the tube this much worse, at least. */
 export const SAMPLED_ALLOWANCE = 0.01;
 const COUNTED_POINTS = 20_000;
 const COUNTED_CONFIDENCE = 0.999;
 
-export function certifyMetric(model: ControlAffineModel, file: DualMetricFile, request: CertifyRequest): Certification {
+export function certifyMetric(
+  model: ControlAffineModel,
+  file: DualMetricFile,
+  question: TubeQuestion,
+  allowance: number,
+  random: Random,
+): Certification {
   const seen = survey(model, dualMetric(file), SURVEY);
-  const extremes = sampledExtremes(model, seen, request);
-  const choice = chooseRate(extremes, request);
+  const extremes = sampledExtremes(model, seen, question, allowance);
+  const choice = chooseRate(extremes, question);
   if (choice.status !== "chosen") return { survey: seen, choice, tube: null, counted: null };
-  const tube = tubeAt(model, seen, extremes, choice.point, request);
-  const counted = countClaims(model, seen, extremes.usableRate, tube, request);
+  const tube = tubeAt(model, extremes, choice.point, question);
+  const counted = countClaims(model, seen, tube, question, random);
   return { survey: seen, choice, tube, counted };
 }
 
-function sampledExtremes(model: ControlAffineModel, seen: Survey, request: CertifyRequest): CertificateExtremes {
-  const worse = (value: number): number => value * (1 + SAMPLED_ALLOWANCE);
+interface SampledExtremes extends CertificateExtremes {
+  readonly spread: (direction: MarginDirection) => number;
+}
+
+/** Each sampled extreme, worse by the allowance. */
+export function sampledExtremes(
+  model: ControlAffineModel,
+  seen: Survey,
+  { wbar, goal }: TubeQuestion,
+  allowance: number,
+): SampledExtremes {
+  const worse = (value: number): number => value * (1 + allowance);
   const known = new Map<string, number>();
   const spreadOf = (direction: MarginDirection): number => {
     const key = JSON.stringify(direction);
@@ -68,10 +94,11 @@ function sampledExtremes(model: ControlAffineModel, seen: Survey, request: Certi
     return value;
   };
   return {
-    usableRate: seen.worst.rate * (1 - SAMPLED_ALLOWANCE),
-    sigma: worse(seen.sigma(request.wbar).value),
+    usableRate: seen.worst.rate - allowance * Math.abs(seen.worst.rate),
+    sigma: worse(seen.sigma(wbar).value),
     authorityDensity: (rate) => worse(seen.authorityDensity(rate).value),
-    goalSpread: (radius) => spreadOf(goalDirection(request.goal, headingErrorOf(model, radius, spreadOf))),
+    goalSpread: (radius) => spreadOf(goalDirection(goal, headingErrorOf(model, radius, spreadOf))),
+    spread: spreadOf,
   };
 }
 
@@ -86,22 +113,21 @@ function headingErrorOf(
   return Math.min(Math.PI / 2, scaled * model.rotation.headingHalf);
 }
 
-function goalDirection(goal: MarginGoal, headingError: number): MarginDirection {
+/** The direction of the asked margin; headingError in rad widens along and across. */
+export function goalDirection(goal: MarginGoal, headingError: number): MarginDirection {
   if (goal.kind === "state" || goal.kind === "planar") return goal as MarginDirection;
   return { kind: goal.kind, headingError };
 }
 
 function tubeAt(
   model: ControlAffineModel,
-  seen: Survey,
-  extremes: CertificateExtremes,
+  extremes: SampledExtremes,
   point: TradeOffPoint,
-  request: CertifyRequest,
+  { window, initialDistance }: TubeQuestion,
 ): CertifiedTube {
-  const worse = (value: number): number => value * (1 + SAMPLED_ALLOWANCE);
-  const radius = tubeRadius({ window: request.window, sigma: extremes.sigma }, point.rate, request.initialDistance);
-  const spreadOf = (direction: MarginDirection): number => worse(seen.spread(direction).value);
-  const headingError = headingErrorOf(model, radius, spreadOf);
+  const { sigma, usableRate } = extremes;
+  const radius = tubeRadius({ window, sigma }, point.rate, initialDistance);
+  const headingError = headingErrorOf(model, radius, extremes.spread);
   const states: MarginDirection[] = Array.from({ length: model.n }, (_, state) => ({ kind: "state", state }));
   const planar: MarginDirection[] =
     model.rotation === null
@@ -110,11 +136,12 @@ function tubeAt(
   const authorityDensity = extremes.authorityDensity(point.rate);
   return {
     rate: point.rate,
+    claimedRate: Number.isFinite(usableRate) ? usableRate : point.rate,
     radius,
-    sigma: extremes.sigma,
+    sigma,
     authority: (radius * authorityDensity) / 2,
     authorityDensity,
-    spreads: [...states, ...planar].map((direction) => ({ direction, value: spreadOf(direction) })),
+    spreads: [...states, ...planar].map((direction) => ({ direction, value: extremes.spread(direction) })),
     headingError,
   };
 }
@@ -122,17 +149,16 @@ function tubeAt(
 /** One joint event, drawn after all claims are frozen: any of them fails at the state. */
 function countClaims(
   model: ControlAffineModel,
-  seen: Survey,
-  claimedRate: number,
+  { condition }: Survey,
   tube: CertifiedTube,
-  request: CertifyRequest,
+  { wbar }: TubeQuestion,
+  random: Random,
 ): CountedEvidence {
-  const { condition } = seen;
   const fails = (at: Float64Array): boolean =>
     !condition.moveTo(at) ||
-    condition.rate().rate < claimedRate ||
-    condition.sigma(request.wbar) > tube.sigma ||
+    condition.rate().rate < tube.claimedRate ||
+    condition.sigma(wbar) > tube.sigma ||
     condition.authorityDensity(tube.rate) > tube.authorityDensity ||
     tube.spreads.some(({ direction, value }) => spread(condition.W, model.n, model.rotation, direction) > value);
-  return countFailures(fails, model.active.length, COUNTED_POINTS, COUNTED_CONFIDENCE, request.random);
+  return countFailures(fails, model.active.length, COUNTED_POINTS, COUNTED_CONFIDENCE, random);
 }

@@ -57,6 +57,8 @@ export interface RunFolder {
   /** Absolute path of an artifact, for a reader or an atomic writer of its own. */
   file(name: string): string;
   hash(name: string): string;
+  /** Removes an artifact, if it is there. */
+  remove(name: string): void;
 }
 
 /** Opens DIR, making it when `create`; leftovers of a killed write are removed. */
@@ -100,6 +102,7 @@ export function openRunFolder(path: string, create: boolean): RunFolder {
     writeJson,
     has: (name) => existsSync(file(name)),
     hash: (name) => sha256(readFileSync(file(name))),
+    remove: (name) => rmSync(file(name), { force: true }),
     manifest: () => (existsSync(file(MANIFEST)) ? readJson<Manifest>(MANIFEST) : null),
     writeManifest: (manifest) => writeJson(MANIFEST, manifest),
   };

@@ -21,6 +21,8 @@ export interface StageContext {
   readonly engine: () => Promise<Engine>;
   readonly progress: (stage: StageName, done: number, total: number, note: string) => void;
   readonly signal: AbortSignal;
+  /** Worker threads for proofs; the outcome is the same for any number. */
+  readonly workers: number;
 }
 
 export interface Stage {
@@ -68,10 +70,12 @@ export async function runStage(stage: Stage, context: StageContext, force: boole
   );
   const before = folder.manifest();
   const record = before?.stages[stage.name];
-  const isWhole = (name: string): boolean => folder.has(name) && folder.hash(name) === record?.files[name];
-  if (!force && record !== undefined && record.inputs === inputs && stage.makes.every(isWhole)) {
+  const isAsRecorded = (name: string): boolean =>
+    (folder.has(name) ? folder.hash(name) : undefined) === record?.files[name];
+  if (!force && record !== undefined && record.inputs === inputs && stage.makes.every(isAsRecorded)) {
     return { name: stage.name, reused: true, seconds: record.seconds, note: "" };
   }
+  for (const name of stage.makes) folder.remove(name);
   const from = performance.now();
   const note = await stage.run(context);
   const seconds = (performance.now() - from) / 1000;

@@ -1,0 +1,101 @@
+/**
+ * The learned metric: rounds of training judged by the verifier, then the prover's word; boxes that it cannot close join
+ * the training set.
+ */
+
+import { goalVector } from "../../metric/goalVector.js";
+import { learnMetric } from "../../metric/learnMetric.js";
+import type { ControlAffineModel, ResidualFile } from "../../model/controlAffine.js";
+import { featuresOf } from "../../nets/features.js";
+import { seededRandom } from "../../num/random.js";
+import { inputCorners } from "../../verify/corners.js";
+import { type LeafTable, leavesOf } from "../../verify/proof/leafTable.js";
+import { FILES, type MetricArtifact, readBounds, readModel } from "../artifacts.js";
+import { certifyMetric, SAMPLED_ALLOWANCE, type TubeQuestion, tubeQuestion } from "../certifyMetric.js";
+import { judgeMetric, worstStates } from "../judgeMetric.js";
+import { type ProofRun, proveClaims, type SavedCertificate, tubeClaims } from "../proveTube.js";
+import type { Stage } from "../stage.js";
+
+/** Analytic metrics of the fitted model to start from, the first that there is. */
+const STARTS = ["metric-constant.json", "metric-riccati.json"];
+const HARD_STATES = 30;
+/** Boxes that a proof may examine while the metric is still being learned. */
+const PROOF_BOXES = 40_000;
+/** 1/s: where training starts when no analytic metric gives a rate. */
+const FIRST_RATE = 0.3;
+
+export const metricStage: Stage = {
+  name: "metric",
+  title: "learn the metric",
+  reads: [FILES.residual, FILES.disturbance, ...STARTS],
+  makes: [FILES.learned, FILES.learning],
+  learns: true,
+  run: async ({ folder, plant, seed, engine, progress, signal, workers }) => {
+    const model = readModel(folder, plant, "fitted");
+    const question = tubeQuestion(plant, readBounds(folder, "fitted"));
+    const start = STARTS.map((file) => folder.readJson<MetricArtifact>(file)).find(({ status }) => status === "found");
+    if (start === undefined || start.status !== "found") {
+      const reason = "no analytic metric was found to start from";
+      folder.writeJson(FILES.learned, { status: "absent", reason } satisfies MetricArtifact);
+      folder.writeJson(FILES.learning, []);
+      return reason;
+    }
+    const residual = folder.readJson<ResidualFile>(FILES.residual);
+    const report = (done: number, total: number, note: string): void => progress("metric", done, total, note);
+    const first = judgeMetric(model, start.metric, question);
+    const learned = await learnMetric(
+      model,
+      inputCorners(model.m),
+      {
+        ...question,
+        goalVector: goalVector(question.goal, model.n, model.rotation),
+        features: featuresOf(plant, plant.settings.metricDependsOn),
+        ...plant.settings.metricNet,
+        initialRate: first.rate ?? FIRST_RATE,
+        start: start.metric,
+      },
+      {
+        engine: await engine(),
+        random: seededRandom(seed).stream("metric"),
+        judge: (metric, rate) => {
+          const judged = judgeMetric(model, metric, question);
+          return { margin: judged.margin, worstStates: worstStates(judged, rate, question, HARD_STATES) };
+        },
+        openStates: (metric) =>
+          openStates(model, { plant, residual, metric }, question, { workers, progress: () => undefined, signal }),
+        progress: report,
+        signal,
+      },
+    );
+    folder.writeJson(FILES.learned, {
+      status: "found",
+      metric: learned.metric,
+      note: `round ${learned.bestRound} of ${learned.rounds} judged best`,
+    } satisfies MetricArtifact);
+    folder.writeJson(FILES.learning, learned.history);
+    return `best of ${learned.rounds} rounds: ${learned.bestRound}`;
+  },
+};
+
+/** States of the boxes that stop the proof of a metric's tube; null when it closes, empty when there is no tube. */
+async function openStates(
+  model: ControlAffineModel,
+  subject: SavedCertificate,
+  question: TubeQuestion,
+  run: ProofRun,
+): Promise<readonly Float64Array[] | null> {
+  const { tube } = certifyMetric(model, subject.metric, question, SAMPLED_ALLOWANCE, seededRandom(0));
+  if (tube === null) return [];
+  const proof = await proveClaims(subject, tubeClaims(tube, Array.from(question.wbar)), run, PROOF_BOXES);
+  if (proof.status === "proved") return null;
+  return [...proof.refuted.map(({ at }) => at), ...openCentres(proof.leaves, tube.spreads.length)].slice(
+    0,
+    2 * HARD_STATES,
+  );
+}
+
+function openCentres(table: LeafTable, spreads: number): Float64Array[] {
+  return leavesOf(table, spreads)
+    .filter(({ status }) => status === "open")
+    .map(({ lower, upper }) => lower.map((low, i) => (low + upper[i]!) / 2));
+}
