@@ -21,7 +21,7 @@ export function logFile(set: DataSet): Uint8Array {
   const { states, inputs } = set.truth;
   const random = seededRandom(set.seed);
   const runs = Array.from({ length: set.runs }, (_, r) =>
-    simulateRun(set.truth, set.seconds, random.stream(`run ${r}`)),
+    simulateRun(set.truth, set.seconds, random.stream(`run ${r}`), r),
   );
   const rows = runs.reduce((sum, run) => sum + run.time.length, 0);
   const gather = (of: (run: number, k: number) => number): Float32Array => {

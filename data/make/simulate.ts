@@ -21,7 +21,8 @@ export interface Truth {
   readonly disturbance: readonly number[];
   /** xdot(x, u, w). */
   readonly rates: (x: readonly number[], u: readonly number[], w: readonly number[]) => number[];
-  readonly start: (random: Random) => number[];
+  /** First state of a run by its index, from 0. */
+  readonly start: (random: Random, run: number) => number[];
   /** The input law of one run: called once a sample with the true state. */
   readonly excitation: (random: Random) => (time: number, x: readonly number[]) => number[];
 }
@@ -39,13 +40,13 @@ export interface SimulatedRun {
 export const STEP = 0.02;
 const SUBSTEPS = 5;
 
-export function simulateRun(truth: Truth, seconds: number, random: Random): SimulatedRun {
+export function simulateRun(truth: Truth, seconds: number, random: Random, index: number): SimulatedRun {
   const { states, inputs, disturbance, rates } = truth;
   const [n, m, p] = [states.length, inputs.length, disturbance.length];
   const count = Math.round(seconds / STEP) + 1;
   const w = disturbance.map((bound) => boundedSignal(bound, random));
   const law = truth.excitation(random);
-  let x = truth.start(random);
+  let x = truth.start(random, index);
   const run = {
     time: Float64Array.from({ length: count }, (_, k) => k * STEP),
     measured: new Float64Array(count * n),

@@ -1,5 +1,6 @@
 /** Truth of the survey boat, an invented vessel: manoeuvring rates of the usual textbook form, sway not actuated. */
-import { between, boxPoint, heldDraws, type Truth } from "./simulate.js";
+import { sobolPoints } from "../../src/num/sobol.js";
+import { between, heldDraws, type Truth } from "./simulate.js";
 
 export interface BoatHull {
   /** Quadratic surge drag (1/m) and the surge rate from sway times yaw rate (1). */
@@ -26,6 +27,12 @@ export const WITH_POD: BoatHull = {
   disturbance: [0.005, 0.004, 0.004],
 };
 
+/** Low end and width of the first surge, sway (m/s) and yaw rate (rad/s). */
+const START_BOX = [
+  [0.52, 1.56],
+  [-0.34, 0.68],
+  [-0.4, 0.8],
+] as const;
 const [MASS, INERTIA] = [120, 50];
 const NOISE = { position: 0.0008, heading: 0.0003, speed: 0.0005, yawRate: 0.0003 };
 
@@ -56,17 +63,10 @@ export function surveyBoat(hull: BoatHull): Truth {
         moment! / INERTIA - 0.8 * r! - hull.yaw[0] * crossFlow(r!) - hull.yaw[1] * u! * v! + onYaw!,
       ];
     },
-    start: (random) => {
-      const [u, v, r] = boxPoint(
-        random,
-        [
-          [0.6, 2],
-          [-0.35, 0.35],
-          [-0.4, 0.4],
-        ],
-        0.4,
-      ) as [number, number, number];
-      return [between(random, -15, 15), between(random, -15, 15), between(random, -Math.PI, Math.PI), u, v, r];
+    start: (random, run) => {
+      // low-discrepancy over a box a fifth larger than the envelope: sway is not actuated, so its corners must be started in
+      const [u, v, r] = sobolPoints(3, 1, run + 1).map((part, i) => START_BOX[i]![0] + part * START_BOX[i]![1]);
+      return [between(random, -15, 15), between(random, -15, 15), between(random, -Math.PI, Math.PI), u!, v!, r!];
     },
     excitation: (random) => {
       const surgeGoal = heldDraws(random, [2, 5], () => between(random, 0.6, 2));

@@ -1,5 +1,5 @@
 /**
- * Where the logs hold states: the distance from a scaled state to the nearest sample of the fit runs, in the states that
+ * Where the logs hold states: the distance from a scaled state to the nearest logged sample, in the states that
  * the unknown terms depend on (elsewhere the model is the prior and needs no log). Within `radius` a state is supported.
  * The search is a grid of cells of that size, exact up to the radius.
  */
@@ -18,7 +18,7 @@ export interface Support {
   readonly unsupportedShare: number;
 }
 
-export const SUPPORT_RADIUS = 0.25;
+export const SUPPORT_RADIUS = 0.3;
 const POINTS = 4096;
 
 export function supportOf(plant: Plant, runs: readonly Run[]): Support {

@@ -78,7 +78,7 @@ const LAST_SCALE = 0.02;
 const LAST_DECAY = 0.02;
 /** Rounds that the prover may ask for. */
 const PROVER_ROUNDS = 3;
-const LEARNING_RATE = 3e-2;
+const LEARNING_RATE = 1e-2;
 const RATE_LEARNING_RATE = 1e-2;
 
 export async function learnMetric(

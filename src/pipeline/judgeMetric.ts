@@ -16,6 +16,8 @@ export interface QuickJudgement {
   readonly seen: Survey;
 }
 
+/** A certificate is asked with its allowances: this share of the authority limit is left to a design. */
+export const AUTHORITY_SHARE = 0.97;
 const QUICK = { points: 1024, starts: 4 };
 
 export function judgeMetric(model: ControlAffineModel, file: DualMetricFile, question: TubeQuestion): QuickJudgement {

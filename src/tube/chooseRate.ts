@@ -6,7 +6,7 @@ import { type TubeDisturbance, tubeRadius } from "./tube.js";
 
 /** What a verified certificate tells a tube: suprema over the claimed envelope, each an upper bound in its evidence. */
 export interface CertificateExtremes {
-  /** Largest rate a tube may use, 1/s; 0 or less when the certificate fails. */
+  /** The slowest pointwise rate, 1/s; a tube's own rate is strictly below. 0 or less: the certificate fails. */
   readonly usableRate: number;
   readonly sigma: number;
   /** sup of the authority density at a rate. */
@@ -42,17 +42,19 @@ export interface TubeRequest {
 
 const CURVE_POINTS = 24;
 const BISECTIONS = 12;
+/** A tube's rate is below the usable one by at least this share: the authority is infinite at it. */
+const STRICTLY = 0.01;
 
 export function chooseRate(extremes: CertificateExtremes, request: TubeRequest): RateChoice {
   if (!(extremes.usableRate > 0)) return { status: "noRate", curve: [] };
   const pointAt = (rate: number): TradeOffPoint => tradeOffAt(rate, extremes, request);
-  const usableRate = Number.isFinite(extremes.usableRate)
-    ? extremes.usableRate
+  const fastestRate = Number.isFinite(extremes.usableRate)
+    ? (1 - STRICTLY) * extremes.usableRate
     : firstRateOverLimit(pointAt, request.authorityLimit);
-  const curve = Array.from({ length: CURVE_POINTS }, (_, i) => pointAt((usableRate * (i + 1)) / CURVE_POINTS));
+  const curve = Array.from({ length: CURVE_POINTS }, (_, i) => pointAt((fastestRate * (i + 1)) / CURVE_POINTS));
   const isAllowed = (point: TradeOffPoint): boolean => point.authority <= request.authorityLimit;
   if (request.rate !== null) {
-    if (request.rate > usableRate) return { status: "noRate", curve };
+    if (request.rate > fastestRate) return { status: "noRate", curve };
     const point = pointAt(request.rate);
     return isAllowed(point) ? { status: "chosen", point, curve } : { status: "authorityExceeded", least: point, curve };
   }

@@ -52,7 +52,14 @@ export function survey(model: ControlAffineModel, metric: DualMetric, { points, 
       here.moveTo(active) ? value() : Number.POSITIVE_INFINITY;
 
   const negativeRate = at(() => -here.rate().rate);
-  const slow = refined(negativeRate, scan(negativeRate, full), full);
+  const slowest = scan(negativeRate, full);
+  const slow = refined(negativeRate, slowest, full);
+  /** The gain grows without end towards the slowest states: they are searched from as well. */
+  const densest = (density: (active: Float64Array) => number): Extreme => {
+    const hints = [slow, ...slowest].map((state) => ({ at: state.at, value: density(state.at) }));
+    const best = [...scan(density, coarse), ...hints].sort((a, b) => b.value - a.value).slice(0, coarse.starts + 1);
+    return refined(density, best, coarse);
+  };
   const surveyed = (active: Float64Array): SurveyedState => {
     const isDefinite = here.moveTo(active);
     const { rate, corner } = isDefinite ? here.rate() : { rate: Number.NEGATIVE_INFINITY, corner: 0 };
@@ -75,10 +82,6 @@ export function survey(model: ControlAffineModel, metric: DualMetric, { points, 
         at(() => spread(here.W, model.n, model.rotation, direction)),
         full,
       ),
-    authorityDensity: (rate) =>
-      largest(
-        at(() => here.authorityDensity(rate)),
-        coarse,
-      ),
+    authorityDensity: (rate) => densest(at(() => here.authorityDensity(rate))),
   };
 }

@@ -13,14 +13,12 @@ import { scanPoints } from "../../verify/scanPoints.js";
 import { survey } from "../../verify/survey.js";
 import { ANALYTIC_KINDS, FILES, type MetricArtifact, readBounds, readModel } from "../artifacts.js";
 import { tubeQuestion } from "../certifyMetric.js";
-import { judgeMetric } from "../judgeMetric.js";
+import { AUTHORITY_SHARE, judgeMetric } from "../judgeMetric.js";
 import type { Stage } from "../stage.js";
 
 /** Active states that the constant metric starts from, and how often cuts may join them. */
 const [FIRST_STATES, CUT_ROUNDS, CUTS] = [16, 6, 6];
 const CHECK = { points: 1024, starts: 4 };
-/** The certificate is asked with its allowances: less authority is left to the design. */
-const AUTHORITY_SHARE = 0.97;
 
 export const analyticStage: Stage = {
   name: "analytic",

@@ -97,7 +97,8 @@ function violationsOf(name: string, model: ModelKind, { certification, proof }: 
 /** Table violations.arrow: state, input corner, rate, distance to the nearest logged state. */
 function writeViolations({ folder, plant }: StageContext, rows: readonly Violation[]): void {
   const models = { fitted: readModel(folder, plant, "fitted"), prior: readModel(folder, plant, "prior") };
-  const support = supportOf(plant, readSplit(folder, plant).fit);
+  const { fit, calibration, test } = readSplit(folder, plant);
+  const support = supportOf(plant, [...fit, ...calibration, ...test]);
   const { stateCenter, stateHalf, inputCenter, inputHalf } = plantScaling(plant);
   const corners = inputCorners(plant.inputs.length);
   const states = rows.map(({ at, model }) => embedded(models[model], at));

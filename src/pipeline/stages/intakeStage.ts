@@ -19,7 +19,7 @@ export const intakeStage: Stage = {
   run: async ({ folder, plant, plantText, seed, progress }) => {
     const intake = await intakeLogs(plant, (done, total, note) => progress("intake", done, total, note));
     const split = splitRuns(intake.runs, plant.settings.split, seededRandom(seed).stream("split"));
-    const support = supportOf(plant, split.fit);
+    const support = supportOf(plant, intake.runs);
     const { files, findings, sampleInterval, jitter } = intake;
     const saved: IntakeFile = {
       files,

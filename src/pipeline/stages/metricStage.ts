@@ -12,7 +12,7 @@ import { inputCorners } from "../../verify/corners.js";
 import { type LeafTable, leavesOf } from "../../verify/proof/leafTable.js";
 import { FILES, type MetricArtifact, readBounds, readModel } from "../artifacts.js";
 import { certifyMetric, SAMPLED_ALLOWANCE, type TubeQuestion, tubeQuestion } from "../certifyMetric.js";
-import { judgeMetric, worstStates } from "../judgeMetric.js";
+import { AUTHORITY_SHARE, judgeMetric, worstStates } from "../judgeMetric.js";
 import { type ProofRun, proveClaims, type SavedCertificate, tubeClaims } from "../proveTube.js";
 import type { Stage } from "../stage.js";
 
@@ -48,6 +48,7 @@ export const metricStage: Stage = {
       inputCorners(model.m),
       {
         ...question,
+        authorityLimit: AUTHORITY_SHARE * question.authorityLimit,
         goalVector: goalVector(question.goal, model.n, model.rotation),
         features: featuresOf(plant, plant.settings.metricDependsOn),
         ...plant.settings.metricNet,
