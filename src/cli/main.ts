@@ -10,7 +10,7 @@ import { RunFolderError } from "../pipeline/runFolder.js";
 import { FAIRLEAD_VERSION } from "../pipeline/version.js";
 import { doctor } from "./doctor.js";
 import { InputError } from "./inputError.js";
-import { runCommand, stageCommand } from "./runCommand.js";
+import { recheckCommand, runCommand, stageCommand } from "./runCommand.js";
 
 export type ExitStatus = 0 | 1 | 2 | 3;
 
@@ -88,6 +88,9 @@ function describe(streams: Streams, signal: AbortSignal, finish: (status: ExitSt
         finish(await stageCommand(stage, dir, options, streams, signal)),
     );
   }
+  common(
+    program.command("recheck <dir>").description("prove a stored certificate again from its artifacts alone"),
+  ).action((dir: string, options: Omit<RunOptions, "out">) => finish(recheckCommand(dir, options, streams)));
   program
     .command("doctor")
     .description("engine, versions and a self-check")

@@ -2,8 +2,10 @@
 import { readFileSync } from "node:fs";
 import { availableParallelism } from "node:os";
 import { resolve } from "node:path";
+import { FILES } from "../pipeline/artifacts.js";
 import { type JobOutcome, runJob, runOneStage } from "../pipeline/job.js";
-import { openRunFolder, type RunFolder } from "../pipeline/runFolder.js";
+import { recheckRun } from "../pipeline/recheckRun.js";
+import { type Manifest, openRunFolder, type RunFolder } from "../pipeline/runFolder.js";
 import type { Stage, StageOutcome } from "../pipeline/stage.js";
 import type { Plant } from "../plant/plant.js";
 import { formatProblems, readPlant } from "../plant/readPlant.js";
@@ -40,6 +42,28 @@ export async function runCommand(
   return conclude(outcome, options, streams, folder);
 }
 
+/** `fairlead recheck DIR`. */
+export function recheckCommand(dir: string, options: { json: boolean; quiet: boolean }, streams: Streams): ExitStatus {
+  const { folder, loaded } = openRun(dir);
+  const progress = options.quiet ? silentProgress : terminalProgress(streams.err);
+  const result = recheckRun(folder, loaded.plant, (done, total, note) => progress.update("recheck", done, total, note));
+  progress.settle();
+  if (options.json) streams.out.write(`${JSON.stringify(result, null, 1)}\n`);
+  const words = result.holds
+    ? `the certificate holds: ${result.boxes} boxes tile the envelope and each passes`
+    : `the certificate does not hold as saved:\n${result.faults.map((fault) => `  ${fault}`).join("\n")}`;
+  streams.err.write(`${words}\n`);
+  return result.holds ? 0 : 3;
+}
+
+function openRun(dir: string): { folder: RunFolder; manifest: Manifest; loaded: LoadedPlant } {
+  const folder = openRunFolder(resolve(dir), false);
+  const manifest = folder.manifest();
+  if (manifest === null)
+    throw new InputError(`${dir}: an empty folder; make a run folder with 'fairlead run PLANT.yaml --out ${dir}'`);
+  return { folder, manifest, loaded: parsePlant(folder.readText(FILES.plant), manifest.plantPath) };
+}
+
 export async function stageCommand(
   stage: Stage,
   dir: string,
@@ -47,11 +71,7 @@ export async function stageCommand(
   streams: Streams,
   signal: AbortSignal,
 ): Promise<ExitStatus> {
-  const folder = openRunFolder(resolve(dir), false);
-  const manifest = folder.manifest();
-  if (manifest === null)
-    throw new InputError(`${dir}: an empty folder; make a run folder with 'fairlead run PLANT.yaml --out ${dir}'`);
-  const loaded = parsePlant(folder.readText("plant.yaml"), manifest.plantPath);
+  const { folder, manifest, loaded } = openRun(dir);
   const progress = options.quiet ? silentProgress : terminalProgress(streams.err);
   const outcome = await runOneStage(stage, {
     ...job(loaded, folder, { seed: manifest.seed }, signal),

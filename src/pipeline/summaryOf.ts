@@ -66,7 +66,7 @@ export function summaryOf(sources: SummarySources): Summary {
 function goalOf(plant: Plant): Summary["goal"] {
   const { goal } = plant.settings;
   const { unit, name: state } = plant.states[goalState(plant, goal)]!;
-  if (goal.kind === "state") return { name: state, unit: unit.name, direction: `of ${state}` };
+  if (goal.kind === "state") return { name: state, unit: unit.name, direction: state };
   const direction = {
     planar: "any direction in the plane",
     along: "along the planned heading",

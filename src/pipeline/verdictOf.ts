@@ -38,6 +38,6 @@ export function verdictOf({ goal, certificates, unsupportedShare, isSupported }:
       : `The smallest analytic margin is ${quantity(best.margins[goal.name]!, goal.unit, "up")} (${best.title}).`;
   return {
     holds: true,
-    text: `Tracking stays within ${quantity(margin, goal.unit, "up")} (${goal.direction}), ${learned.evidence}. ${against}`,
+    text: `Tracking stays within ${quantity(margin, goal.unit, "up")}${goal.direction === goal.name ? ` of the plan in ${goal.name}` : ` of the plan, ${goal.direction}`} (${learned.evidence}). ${against}`,
   };
 }
