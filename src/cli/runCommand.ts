@@ -7,6 +7,7 @@ import { type JobOutcome, runJob, runOneStage } from "../pipeline/job.js";
 import { recheckRun } from "../pipeline/recheckRun.js";
 import { type Manifest, openRunFolder, type RunFolder } from "../pipeline/runFolder.js";
 import type { Stage, StageOutcome } from "../pipeline/stage.js";
+import { codeHash } from "../pipeline/version.js";
 import type { Plant } from "../plant/plant.js";
 import { formatProblems, readPlant } from "../plant/readPlant.js";
 import { summaryTable } from "../report/summaryTable.js";
@@ -93,6 +94,7 @@ function job(loaded: LoadedPlant, folder: RunFolder, options: { seed?: number | 
     folder,
     seed: options.seed ?? loaded.plant.settings.seed,
     runtime: `node ${process.version}`,
+    code: codeHash(),
     workers: availableParallelism(),
     signal,
   };

@@ -4,6 +4,8 @@
  *   log margin = log Omega(lambda) + log max sigma + 1/2 log max c^T W c,   Omega = T / (1 - e^{-lambda T})  (T = 0: 1/lambda)
  *   + kappa (max + mean) of max(0, excess(lambda, rho(x)) / 2 + slack lambda) / lambda_ref
  *
+ *   + kappa (max + mean) of max(0, log(R max_i sqrt(W_ii) / room) + slack)         i over the active states
+ *
  * rho(x) = 2 limit / (R sqrt(eigmax B^T W^-1 B)), R = Omega max sigma, is the largest gain that the authority limit
  * allows at x: one condition holds rate and authority at once, and it is finite everywhere. The gradient of a maximum
  * over states is that of their power mean of high order, so that every near-worst state pulls.
@@ -15,6 +17,9 @@ export interface ObjectiveSettings {
   /** Window of the disturbance bound, s. */
   readonly window: number;
   readonly authorityLimit: number;
+  /** Share of an active state's half-range that the tube may take from plans. */
+  readonly roomLimit: number;
+  readonly activeStates: readonly number[];
   /** Rate that a violation is measured in, 1/s. */
   readonly referenceRate: number;
   /** The vector c of the asked margin at a metric, n: the direction of the worst spread. */
@@ -79,11 +84,23 @@ export function batchObjective(
     hinges[i] = Math.max(0, (excess / 2 + SLACK * lambda) / referenceRate);
   });
   const hinge = softMaximum(hinges);
+  const widest = members.map(({ W }) => widestState(W, settings.activeStates));
+  const crowding = Float64Array.from(widest, ({ spread }) =>
+    Math.max(0, Math.log((radius * Math.sqrt(spread)) / settings.roomLimit) + SLACK),
+  );
+  const crowded = softMaximum(crowding);
 
   let onLogRadius = 1;
   let rateSlope = 0;
-  let penalty = HINGE_WEIGHT * hinge.value;
+  let penalty = HINGE_WEIGHT * (hinge.value + crowded.value);
   members.forEach((member, i) => {
+    if (crowding[i]! > 0) {
+      const onCrowding = HINGE_WEIGHT * (crowded.weights[i]! + 1 / count);
+      const { at, spread: width } = widest[i]!;
+      penalty += (HINGE_WEIGHT * crowding[i]!) / count;
+      onLogRadius += onCrowding;
+      member.adjoint.W[at]! += (0.5 * onCrowding) / width;
+    }
     const weight = HINGE_WEIGHT * (hinge.weights[i]! + (hinges[i]! > 0 ? 1 / count : 0));
     penalty += (HINGE_WEIGHT * hinges[i]!) / count;
     if (weight < 1e-9) return;
@@ -120,6 +137,15 @@ function softMaximum(x: Float64Array): { value: number; weights: Float64Array } 
   for (let i = 0; i < x.length; i++) sum += weights[i] = (x[i]! / top) ** ORDER;
   for (let i = 0; i < x.length; i++) weights[i]! /= sum;
   return { value: top, weights };
+}
+
+/** The largest W_ii over the active states and its place in W; 0 where there is none. */
+function widestState(W: Float64Array, active: readonly number[]): { spread: number; at: number } {
+  const n = Math.sqrt(W.length);
+  return active.reduce(
+    (widest, i) => (W[i * n + i]! > widest.spread ? { spread: W[i * n + i]!, at: i * n + i } : widest),
+    { spread: 0, at: 0 },
+  );
 }
 
 function quadratic(W: Float64Array, c: Float64Array): number {

@@ -19,6 +19,7 @@ export interface TubeQuestion {
   readonly window: number;
   readonly goal: MarginGoal;
   readonly authorityLimit: number;
+  readonly roomLimit: number;
   readonly initialDistance: number;
   readonly rate: number | null;
 }
@@ -27,8 +28,8 @@ export function tubeQuestion(
   { settings }: Plant,
   { wbar, window }: Pick<TubeQuestion, "wbar" | "window">,
 ): TubeQuestion {
-  const { goal, authorityLimit, initialDistance, rate } = settings;
-  return { wbar, window, goal, authorityLimit, initialDistance, rate };
+  const { goal, authorityLimit, roomLimit, initialDistance, rate } = settings;
+  return { wbar, window, goal, authorityLimit, roomLimit, initialDistance, rate };
 }
 
 export interface Certification {
@@ -98,6 +99,7 @@ export function sampledExtremes(
     sigma: worse(seen.sigma(wbar).value),
     authorityDensity: (rate) => worse(seen.authorityDensity(rate).value),
     goalSpread: (radius) => spreadOf(goalDirection(goal, headingErrorOf(model, radius, spreadOf))),
+    widestSpread: model.active.reduce((most, state) => Math.max(most, spreadOf({ kind: "state", state })), 0),
     spread: spreadOf,
   };
 }

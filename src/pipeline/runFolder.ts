@@ -28,7 +28,7 @@ export interface StageRecord {
 
 export interface Manifest {
   readonly format: 1;
-  readonly tool: { readonly name: "fairlead"; readonly version: string };
+  readonly tool: { readonly name: "fairlead"; readonly version: string; readonly code: string };
   readonly runtime: string;
   /** Where the plant file was read: its log paths are relative to this. */
   readonly plantPath: string;

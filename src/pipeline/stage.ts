@@ -21,6 +21,8 @@ export interface StageContext {
   readonly engine: () => Promise<Engine>;
   readonly progress: (stage: StageName, done: number, total: number, note: string) => void;
   readonly signal: AbortSignal;
+  /** Hash of the tool's own code. */
+  readonly code: string;
   /** Worker threads for proofs; the outcome is the same for any number. */
   readonly workers: number;
 }
@@ -60,7 +62,7 @@ export async function runStage(stage: Stage, context: StageContext, force: boole
   const inputs = sha256(
     JSON.stringify([
       stage.name,
-      FAIRLEAD_VERSION,
+      context.code,
       context.seed,
       sha256(context.plantText),
       engine === null ? null : [engine.name, engine.version],
@@ -84,7 +86,7 @@ export async function runStage(stage: Stage, context: StageContext, force: boole
   );
   const manifest: Manifest = {
     format: 1,
-    tool: { name: "fairlead", version: FAIRLEAD_VERSION },
+    tool: { name: "fairlead", version: FAIRLEAD_VERSION, code: context.code },
     runtime: context.runtime,
     plantPath: context.plantPath,
     inputs: { ...before?.inputs, ...sources, plant: sha256(context.plantText) },

@@ -2,6 +2,7 @@
 import type { Plant } from "../plant/plant.js";
 import { activeStates, plantScaling } from "../plant/scaling.js";
 import type { CertificateSummary, NamedUnit, Summary } from "../report/artifacts.js";
+import type { RateChoice } from "../tube/chooseRate.js";
 import { marginOf, shrunk } from "../tube/margins.js";
 import { type BoundFile, CERTIFICATE_KINDS, type CertificateKind, type FitFile, type IntakeFile } from "./artifacts.js";
 import type { CertificateFile, ProofFile } from "./certificate.js";
@@ -97,15 +98,7 @@ function certificateSummary(plant: Plant, kind: CertificateKind, file: Certifica
   const { worstRate, worstState, choice, tube, counted, proof } = evidence;
   const shared = { name, title, model, metric, worstRate };
   if (tube === null) {
-    const isSlow = choice.status !== "authorityExceeded";
-    return {
-      ...{ ...shared, ...nothing },
-      status: isSlow ? "fails" : "authorityExceeded",
-      reason: isSlow
-        ? `its rate is ${worstRate.toPrecision(3)} 1/s at ${stateWords(plant, worstState)}`
-        : `it needs at least ${percent(choice.least.authority)} of the half-range; the limit is ${percent(plant.settings.authorityLimit)}`,
-      evidence: "sampled",
-    };
+    return { ...shared, ...nothing, ...refusal(plant, choice, worstRate, worstState), evidence: "sampled" };
   }
   const isFalse = proof?.status === "refuted" || (counted?.failures ?? 0) > 0;
   if (isFalse) {
@@ -129,6 +122,28 @@ function certificateSummary(plant: Plant, kind: CertificateKind, file: Certifica
     authority: Object.fromEntries(plant.inputs.map((input) => [input.name, tube.authority])),
     tubeRadius: tube.radius,
   };
+}
+
+/** Why there is no tube. */
+function refusal(
+  plant: Plant,
+  choice: RateChoice,
+  worstRate: number,
+  worstState: readonly number[],
+): Pick<CertificateSummary, "status" | "reason"> {
+  const { authorityLimit, roomLimit, rate } = plant.settings;
+  if (choice.status === "authorityExceeded") {
+    const least = percent(choice.least.authority);
+    const reason = `it needs at least ${least} of the half-range; the limit is ${percent(authorityLimit)}`;
+    return { status: "authorityExceeded", reason };
+  }
+  if (choice.status === "roomExceeded") {
+    const reason = `its margins take at least ${percent(choice.least.room)} of a state's half-range from plans; the limit is ${percent(roomLimit)}`;
+    return { status: "roomExceeded", reason };
+  }
+  const asked = rate === null || worstRate <= 0 ? "" : `; ${rate} 1/s was asked for`;
+  const where = stateWords(plant, worstState);
+  return { status: "fails", reason: `its rate is ${worstRate.toPrecision(3)} 1/s at ${where}${asked}` };
 }
 
 function openWords(proof: ProofFile | null): string {

@@ -79,6 +79,8 @@ export interface PlantSettings {
   readonly goal: MarginGoal;
   /** Share of each input's half-range that tracking may use. */
   readonly authorityLimit: number;
+  /** Share of each active state's half-range that its margin may take from plans. */
+  readonly roomLimit: number;
   /** Tube radius at the start, as a distance in the metric; 0 by default. */
   readonly initialDistance: number;
   /** Contraction rate (1/s); null: chosen by the tool. */

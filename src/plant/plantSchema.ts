@@ -139,6 +139,14 @@ const margin = z
       .max(1)
       .default(0.4)
       .describe("share, above 0 and up to 1, of each input's half-range that tracking may use"),
+    room: z
+      .number()
+      .gt(0)
+      .lt(1)
+      .default(0.5)
+      .describe(
+        "share, above 0 and below 1, of each state's half-range that the margins may take from plans; positions and headings that nothing depends on are free",
+      ),
     rate: z
       .union([z.literal("auto"), positive])
       .default("auto")

@@ -123,6 +123,7 @@ export function plantSettings(file: PlantFile, quantities: Quantities, symmetry:
     unsupported: logs.unsupported,
     goal: readGoal(margin.minimise, quantities, symmetry, ignore),
     authorityLimit: margin.authority,
+    roomLimit: margin.room,
     initialDistance: margin.initialDistance,
     rate: margin.rate === "auto" ? null : margin.rate,
     metricDependsOn: readDependencies(networks.metric.from ?? free, [], names, symmetry, ignore),

@@ -78,9 +78,10 @@ export interface CertificateSummary {
   readonly metric: "network" | "constant";
   /**
    * holds: margin and authority are given. fails: it does not contract everywhere. authorityExceeded: it contracts, but
-   * no rate keeps tracking within the authority limit. absent: no such metric was found.
+   * no rate keeps tracking within the authority limit. roomExceeded: its margins leave plans too little of the envelope.
+   * absent: no such metric was found.
    */
-  readonly status: "holds" | "fails" | "authorityExceeded" | "absent";
+  readonly status: "holds" | "fails" | "authorityExceeded" | "roomExceeded" | "absent";
   readonly reason: string;
   readonly evidence: Evidence;
   /** Rate of the tube; null without one. */

@@ -15,6 +15,7 @@ export const STATUS_WORDS: Readonly<Record<CertificateSummary["status"], { mark:
   holds: { mark: "✓", words: "holds" },
   fails: { mark: "✕", words: "fails" },
   authorityExceeded: { mark: "▲", words: "over the authority limit" },
+  roomExceeded: { mark: "▲", words: "leaves plans too little room" },
   absent: { mark: "–", words: "none found" },
 };
 

@@ -51,10 +51,10 @@ const certificate = z.strictObject({
   model: z.enum(["fitted", "prior"]).describe("Model that it was made for and is judged on"),
   metric: z.enum(["network", "constant"]).describe("Kind of metric"),
   status: z
-    .enum(["holds", "fails", "authorityExceeded", "absent"])
+    .enum(["holds", "fails", "authorityExceeded", "roomExceeded", "absent"])
     .describe(
       "holds: margin and authority are given; fails: it does not contract everywhere; authorityExceeded: no rate keeps " +
-        "tracking within the authority limit; absent: no such metric was found",
+        "tracking within the authority limit; roomExceeded: its margins leave plans too little of the envelope; absent: no such metric was found",
     ),
   reason: z.string().describe("Why, in words"),
   evidence: z.enum(["sampled", "counted", "proved"]).describe("How the claims are known: their weakest part"),

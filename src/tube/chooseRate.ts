@@ -13,6 +13,8 @@ export interface CertificateExtremes {
   readonly authorityDensity: (rate: number) => number;
   /** sup of c^T W c for the asked margin, given the tube's radius (a heading error widens along and across). */
   readonly goalSpread: (radius: number) => number;
+  /** sup of W_ii over the active states; 0 where there is none. */
+  readonly widestSpread: number;
 }
 
 export interface TradeOffPoint {
@@ -23,6 +25,8 @@ export interface TradeOffPoint {
   readonly margin: number;
   /** Share of the inputs' half-range. */
   readonly authority: number;
+  /** Largest share of an active state's half-range that its margin takes from plans. */
+  readonly room: number;
 }
 
 export type RateChoice =
@@ -30,12 +34,15 @@ export type RateChoice =
   /** The certificate contracts nowhere: no tube. */
   | { readonly status: "noRate"; readonly curve: readonly TradeOffPoint[] }
   /** No rate keeps the authority within the limit; `least` is the rate that needs least. */
-  | { readonly status: "authorityExceeded"; readonly least: TradeOffPoint; readonly curve: readonly TradeOffPoint[] };
+  | { readonly status: "authorityExceeded"; readonly least: TradeOffPoint; readonly curve: readonly TradeOffPoint[] }
+  /** No rate within the authority limit leaves plans their room; `least` takes least. */
+  | { readonly status: "roomExceeded"; readonly least: TradeOffPoint; readonly curve: readonly TradeOffPoint[] };
 
 export interface TubeRequest {
   readonly window: number;
   readonly initialDistance: number;
   readonly authorityLimit: number;
+  readonly roomLimit: number;
   /** A rate that the user insists on, 1/s. */
   readonly rate: number | null;
 }
@@ -52,14 +59,21 @@ export function chooseRate(extremes: CertificateExtremes, request: TubeRequest):
     ? (1 - STRICTLY) * extremes.usableRate
     : firstRateOverLimit(pointAt, request.authorityLimit);
   const curve = Array.from({ length: CURVE_POINTS }, (_, i) => pointAt((fastestRate * (i + 1)) / CURVE_POINTS));
-  const isAllowed = (point: TradeOffPoint): boolean => point.authority <= request.authorityLimit;
+  const isWithinAuthority = (point: TradeOffPoint): boolean => point.authority <= request.authorityLimit;
+  const isAllowed = (point: TradeOffPoint): boolean => isWithinAuthority(point) && point.room <= request.roomLimit;
   if (request.rate !== null) {
     if (request.rate > fastestRate) return { status: "noRate", curve };
     const point = pointAt(request.rate);
-    return isAllowed(point) ? { status: "chosen", point, curve } : { status: "authorityExceeded", least: point, curve };
+    if (isAllowed(point)) return { status: "chosen", point, curve };
+    return { status: isWithinAuthority(point) ? "roomExceeded" : "authorityExceeded", least: point, curve };
   }
   const fastest = curve.findLastIndex(isAllowed);
   if (fastest < 0) {
+    const affordable = curve.filter(isWithinAuthority);
+    if (affordable.length > 0) {
+      const least = affordable.reduce((a, b) => (b.room < a.room ? b : a));
+      return { status: "roomExceeded", least, curve };
+    }
     const least = curve.reduce((a, b) => (b.authority < a.authority ? b : a));
     return { status: "authorityExceeded", least, curve };
   }
@@ -88,5 +102,6 @@ function tradeOffAt(rate: number, extremes: CertificateExtremes, request: TubeRe
     radius,
     margin: radius * Math.sqrt(extremes.goalSpread(radius)),
     authority: (radius * extremes.authorityDensity(rate)) / 2,
+    room: radius * Math.sqrt(extremes.widestSpread),
   };
 }

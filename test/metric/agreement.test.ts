@@ -61,6 +61,8 @@ describe("gradient of the batch objective", () => {
       wbar: Float64Array.of(0.2, 0.1),
       window: 0.5,
       authorityLimit: 0.5,
+      roomLimit: 1e3,
+      activeStates: [1, 3],
       referenceRate: 0.6,
       goalVector: goalVector({ kind: "planar" }, n, model.rotation),
     };
@@ -94,11 +96,13 @@ describe("gradient of the batch objective", () => {
       });
       return { value: batchObjective(terms, members, lambda, settings), members };
     };
-    for (const [lambda, authorityLimit] of [
-      [0.4, 0.5],
-      [2.5, 0.01],
+    for (const [lambda, authorityLimit, roomLimit] of [
+      [0.4, 0.5, 1e3],
+      [2.5, 0.01, 1e3],
+      [0.4, 0.5, 1e-3],
     ] as const) {
       settings.authorityLimit = authorityLimit;
+      settings.roomLimit = roomLimit;
       const { value, members } = evaluate(lambda);
       const h = 1e-6;
       const up = evaluate(lambda * Math.exp(h)).value.objective;

@@ -57,7 +57,13 @@ export function picture(
     tradeOff: Array.from({ length: 24 }, (_, i) => {
       const rate = (worstRate * (i + 1)) / 24;
       const radius = (0.0412 * 0.73 * worstRate) / rate;
-      return { rate, radius, margin: (margin * radius) / 0.0412, authority: 0.08 + 0.09 / (1.0001 - rate / worstRate) };
+      return {
+        rate,
+        radius,
+        margin: (margin * radius) / 0.0412,
+        authority: 0.08 + 0.09 / (1.0001 - rate / worstRate),
+        room: 0.3,
+      };
     }),
     authorityLimit: 0.4,
     footprint: null,

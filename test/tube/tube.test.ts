@@ -54,8 +54,9 @@ describe("choice of the rate", () => {
     sigma: 0.05,
     authorityDensity: density,
     goalSpread: () => 4,
+    widestSpread: 1,
   };
-  const request = { window: 0.2, initialDistance: 0, authorityLimit: 0.4, rate: null };
+  const request = { window: 0.2, initialDistance: 0, authorityLimit: 0.4, roomLimit: 0.9, rate: null };
 
   it("is the fastest that the authority limit allows, so the margin is the least", () => {
     const choice = chooseRate(extremes, request);
@@ -81,6 +82,16 @@ describe("choice of the rate", () => {
     expect(chooseRate(extremes, { ...request, authorityLimit: 1e-3 }).status).toBe("authorityExceeded");
     expect(chooseRate({ ...extremes, usableRate: -0.1 }, request).status).toBe("noRate");
     expect(chooseRate(extremes, { ...request, rate: 0.695 }).status).toBe("noRate");
+  });
+  it("leaves plans their room: slower rates that take too much are not chosen, and none is when all do", () => {
+    const chosen = chooseRate(extremes, request);
+    if (chosen.status !== "chosen") throw new Error(chosen.status);
+    expect(chosen.point.room).toBeCloseTo(chosen.point.radius, 12);
+    const wide = { ...extremes, widestSpread: (1.01 * (0.9 / chosen.point.radius)) ** 2 };
+    const refused = chooseRate(wide, request);
+    expect(refused.status).toBe("roomExceeded");
+    if (refused.status === "roomExceeded") expect(refused.least.room).toBeGreaterThan(0.9);
+    expect(chooseRate(wide, { ...request, authorityLimit: 1e-3 }).status).toBe("authorityExceeded");
   });
   it("bounds the rate of a fully actuated plant by the authority alone", () => {
     const choice = chooseRate(

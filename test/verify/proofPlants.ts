@@ -57,6 +57,7 @@ export function handPlant(parts: HandPlant): Plant {
       window: null,
       unsupported: "refuse",
       goal: { kind: "state", state: 0 },
+      roomLimit: 0.5,
       authorityLimit: 1,
       initialDistance: 0,
       rate: null,

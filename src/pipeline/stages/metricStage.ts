@@ -49,6 +49,7 @@ export const metricStage: Stage = {
       {
         ...question,
         authorityLimit: AUTHORITY_SHARE * question.authorityLimit,
+        activeStates: model.active,
         goalVector: goalVector(question.goal, model.n, model.rotation),
         features: featuresOf(plant, plant.settings.metricDependsOn),
         ...plant.settings.metricNet,
