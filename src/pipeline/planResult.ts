@@ -87,12 +87,12 @@ export function planSummary(
   const { plant, plan, tube, window, cells } = context;
   const goal = goalName(plant);
   const names = marginNames(plant, tube);
-  const valueOf = (fixed: number, at: (row: PlanRow) => number | null): PlanValue => ({ fixed, ...overTime(rows, at) });
+  const along = (fixed: number, at: (row: PlanRow) => number | null): PlanValue => ({ fixed, ...overTime(rows, at) });
   const margins = names.map(
     ({ name, unit, half }, s): PlanMargin => ({
       name,
       unit,
-      ...valueOf(marginOf(tube.radius, tube.spreads[s]!.value, half), ({ margins: of }) => of[s] ?? null),
+      ...along(marginOf(tube.radius, tube.spreads[s]!.value, half), ({ margins: of }) => of[s] ?? null),
     }),
   );
   const end = laid?.end == null ? null : endOf(context, laid.end);
@@ -114,8 +114,8 @@ export function planSummary(
     motionShare,
     goal,
     margins,
-    authority: { ...valueOf(tube.authority, ({ authority }) => authority), limit: plant.settings.authorityLimit },
-    radius: valueOf(tube.radius, ({ radius }) => radius),
+    authority: { ...along(tube.authority, ({ authority }) => authority), limit: plant.settings.authorityLimit },
+    radius: along(tube.radius, ({ radius }) => radius),
     cells: cells.count,
     assumptions: assumptionsOf(plant, window),
   };
