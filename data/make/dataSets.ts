@@ -18,6 +18,6 @@ export const DATA_SETS: readonly DataSet[] = [
   { name: "orchard-rover-tank", truth: orchardRover(FULL_TANK), runs: 36, seconds: 18, seed: 102 },
   { name: "yard-crane", truth: yardCrane(LIGHT_HOOK), runs: 96, seconds: 14, seed: 201 },
   { name: "yard-crane-hook", truth: yardCrane(HEAVY_HOOK), runs: 40, seconds: 14, seed: 202 },
-  { name: "survey-boat", truth: surveyBoat(BARE_HULL), runs: 250, seconds: 6, seed: 301 },
-  { name: "survey-boat-pod", truth: surveyBoat(WITH_POD), runs: 100, seconds: 6, seed: 302 },
+  { name: "survey-boat", truth: surveyBoat(BARE_HULL), runs: 230, seconds: 7, seed: 309 },
+  { name: "survey-boat-pod", truth: surveyBoat(WITH_POD), runs: 80, seconds: 7, seed: 302 },
 ];

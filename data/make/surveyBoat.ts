@@ -69,8 +69,8 @@ export function surveyBoat(hull: BoatHull): Truth {
       return [between(random, -15, 15), between(random, -15, 15), between(random, -Math.PI, Math.PI), u!, v!, r!];
     },
     excitation: (random) => {
-      const surgeGoal = heldDraws(random, [2, 5], () => between(random, 0.6, 2));
-      const yawGoal = heldDraws(random, [1, 3], () => between(random, -0.4, 0.4));
+      const surgeGoal = heldDraws(random, [2, 4], () => between(random, 0.6, 2));
+      const yawGoal = heldDraws(random, [1, 2.5], () => between(random, -0.4, 0.4));
       return (time, [, , , u, v, r]) => {
         const balance = 0.12 * u! + hull.surge[0] * u! * u! - hull.surge[1] * v! * r!;
         return [

@@ -74,7 +74,14 @@ export interface BoundFile {
   /** One entry a model: bound per leftover channel, SI. */
   readonly bounds: Readonly<Record<ModelKind, readonly number[]>>;
   readonly quantile: number;
-  /** Of the fitted model. */
+  /** Of the fitted model: scale of each channel on the fit runs, SI, and the peaks of every held-out run, SI. */
+  readonly scale: readonly number[];
+  readonly heldOut: readonly {
+    readonly part: "calibration" | "test";
+    readonly run: string;
+    readonly score: number;
+    readonly peaks: readonly number[];
+  }[];
   readonly calibrationScores: readonly number[];
   readonly testScores: readonly number[];
   readonly testShareCovered: number;

@@ -5,7 +5,8 @@
  */
 
 import type { LocalBounds } from "../tube/planTube.js";
-import { type CellProver, cellProver } from "../verify/proof/cellProver.js";
+import { cellProver } from "../verify/proof/cellProver.js";
+import { channelPush } from "../verify/proof/channelPush.js";
 import type { ProofClaims } from "../verify/proof/claims.js";
 import { leafSearch } from "../verify/proof/leafSearch.js";
 import type { Leaf, LeafTable } from "../verify/proof/leafTable.js";
@@ -14,6 +15,8 @@ import type { SavedCertificate } from "./proveTube.js";
 export interface PlanCells {
   /** Worst bounds over the cells that share a point with the box; null when one of them is not proved. */
   local(lower: Float64Array, upper: Float64Array): LocalBounds | null;
+  /** The same for a law of another rate: a cell counts as proved when its authority density there is at most `most`. */
+  localAt(rate: number, most: number): PlanCells["local"];
   /** A touched leaf box without proof, or null. */
   unproved(lower: Float64Array, upper: Float64Array): Leaf | null;
   /** Cells used so far. */
@@ -29,8 +32,9 @@ interface Cell {
   parts: readonly Cell[] | null;
 }
 
-/** Cells are halved until no edge that matters is longer; the whole range is 2. */
-const LONGEST_EDGE = 1 / 8;
+/** Cells are halved to a size of which the whole box holds this power of two, or to the finest edge; its own edge is 2. */
+const CELL_HALVINGS = 12;
+const FINEST_EDGE = 1 / 32;
 
 /** claims: those that the boxes prove. active: states of the active coordinates, in order. */
 export function planCells(
@@ -44,16 +48,10 @@ export function planCells(
   const widthAt = active.map((state) =>
     claims.spreads.findIndex(({ direction }) => direction.kind === "state" && direction.state === state),
   );
-  const isHalved = active.map((_, i) => {
-    for (let k = 0; k < boxes.count; k++) {
-      const at = k * boxes.dimension + i;
-      if (boxes.lower[at]! > -1 || boxes.upper[at]! < 1) return true;
-    }
-    return false;
-  });
   const prover = cellProver(subject, claims);
-  const pushProvers = pushProversOf(subject, claims);
-  const roots = new Map<string, Cell>();
+  const push = channelPush(subject, claims.sigma?.wbar ?? []);
+  const longestEdge = Math.max(FINEST_EDGE, 2 ** (1 - Math.floor(CELL_HALVINGS / Math.max(1, push.used.length))));
+  const roots = new Map<Leaf, Cell>();
   const used = new Set<Cell>();
 
   const boundsOf = (cell: Cell, fallback: Leaf["bounds"] | null): LocalBounds => {
@@ -61,11 +59,9 @@ export function planCells(
     const own = result === null ? fallback : result.status === "proved" ? result.bounds : null;
     // a part that is not shown by itself keeps what is shown of the whole
     if (own === null) return cell.parent!;
-    const pushes = pushProvers.map((push, c) => {
-      const shown = push.examine(cell.lower, cell.upper);
-      const ofChannel = shown.status === "proved" ? shown.bounds.sigma : own.sigma;
-      return Math.min(ofChannel, own.sigma, cell.parent?.pushes[c] ?? Number.POSITIVE_INFINITY);
-    });
+    const pushes = push
+      .on(cell.lower, cell.upper)
+      .map((shown, c) => Math.min(shown, own.sigma, cell.parent?.pushes[c] ?? Number.POSITIVE_INFINITY));
     const { parent } = cell;
     return {
       rate: Math.max(own.rate, parent?.rate ?? Number.NEGATIVE_INFINITY),
@@ -79,20 +75,19 @@ export function planCells(
   const partsOf = (cell: Cell): readonly Cell[] => {
     if (cell.parts !== null) return cell.parts;
     let axis = -1;
-    let longest = LONGEST_EDGE;
-    for (let i = 0; i < active.length; i++) {
+    let longest = longestEdge;
+    for (const i of push.used) {
       const edge = cell.upper[i]! - cell.lower[i]!;
-      if (isHalved[i] && edge > longest) {
-        longest = edge;
-        axis = i;
-      }
+      if (edge <= longest) continue;
+      longest = edge;
+      axis = i;
     }
     cell.parts = axis < 0 ? [] : [0, 1].map((side) => half(cell, axis, side));
     return cell.parts;
   };
 
   const visit = (cell: Cell, lower: Float64Array, upper: Float64Array, found: Cell[]): void => {
-    if (lower.some((low, i) => cell.lower[i]! > upper[i]! || cell.upper[i]! < low)) return;
+    for (let i = 0; i < lower.length; i++) if (cell.lower[i]! > upper[i]! || cell.upper[i]! < lower[i]!) return;
     cell.bounds ??= boundsOf(cell, null);
     const parts = partsOf(cell);
     if (parts.length === 0) found.push(cell);
@@ -100,42 +95,50 @@ export function planCells(
   };
 
   const rootOf = (leaf: Leaf): Cell => {
-    const key = `${leaf.lower.join()};${leaf.upper.join()}`;
-    const known = roots.get(key);
+    const known = roots.get(leaf);
     if (known !== undefined) return known;
     const cell: Cell = { lower: leaf.lower, upper: leaf.upper, parent: null, bounds: null, parts: null };
     cell.bounds = boundsOf(cell, leaf.bounds);
-    roots.set(key, cell);
+    roots.set(leaf, cell);
     return cell;
   };
 
+  const touched = (lower: Float64Array, upper: Float64Array): readonly Cell[] | null => {
+    const leaves = search.touching(lower, upper);
+    if (leaves.length === 0 || leaves.some(({ status }) => status !== "proved")) return null;
+    const found: Cell[] = [];
+    for (const leaf of leaves) visit(rootOf(leaf), lower, upper, found);
+    for (const cell of found) used.add(cell);
+    return found;
+  };
+
   return {
-    local: (lower, upper) => {
-      const leaves = search.touching(lower, upper);
-      if (leaves.length === 0 || leaves.some(({ status }) => status !== "proved")) return null;
-      const found: Cell[] = [];
-      for (const leaf of leaves) visit(rootOf(leaf), lower, upper, found);
-      for (const cell of found) used.add(cell);
-      return found.map((cell) => cell.bounds!).reduce(worse);
+    local: (lower, upper) =>
+      touched(lower, upper)
+        ?.map((cell) => cell.bounds!)
+        .reduce(worse) ?? null,
+    localAt: (rate, most) => {
+      const atRate = cellProver(subject, { rate: claims.rate, sigma: null, spreads: [], authority: { rate, most } });
+      const authorities = new Map<Cell, number>();
+      const authorityOf = (cell: Cell): number => {
+        const known = authorities.get(cell);
+        if (known !== undefined) return known;
+        const result = atRate.examine(cell.lower, cell.upper);
+        const authority = result.status === "proved" ? result.bounds.authority : Number.POSITIVE_INFINITY;
+        authorities.set(cell, authority);
+        return authority;
+      };
+      return (lower, upper) => {
+        const cells = touched(lower, upper);
+        if (cells?.some((cell) => authorityOf(cell) > most) ?? true) return null;
+        return cells!.map((cell) => ({ ...cell.bounds!, authority: authorityOf(cell) })).reduce(worse);
+      };
     },
     unproved: (lower, upper) => search.touching(lower, upper).find(({ status }) => status !== "proved") ?? null,
     get count() {
       return used.size;
     },
   };
-}
-
-/** One prover a channel: its own push alone. */
-function pushProversOf(subject: SavedCertificate, claims: ProofClaims): CellProver[] {
-  const wbar = claims.sigma?.wbar ?? [];
-  return wbar.map((_, c) =>
-    cellProver(subject, {
-      rate: claims.rate,
-      sigma: { wbar: wbar.map((bound, i) => (i === c ? bound : 0)), most: Number.MAX_VALUE },
-      spreads: [],
-      authority: null,
-    }),
-  );
 }
 
 function half(cell: Cell, axis: number, side: number): Cell {

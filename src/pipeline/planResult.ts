@@ -2,17 +2,16 @@
 import type { Plan } from "../logs/readPlan.js";
 import type { ControlAffineModel } from "../model/controlAffine.js";
 import type { Plant } from "../plant/plant.js";
-import { activeStates, plantScaling } from "../plant/scaling.js";
 import type { NamedUnit } from "../report/artifacts.js";
 import type { PlanMargin, PlanPicture, PlanRow, PlanSummary, PlanValue } from "../report/planArtifacts.js";
-import { marginOf, shrunk } from "../tube/margins.js";
+import { marginOf } from "../tube/margins.js";
 import type { PlanProblem } from "../tube/planChecks.js";
 import type { PlanMotion } from "../tube/planSteps.js";
-import type { PlanTube, PlanTubeEnd } from "../tube/planTube.js";
+import type { PlanTube } from "../tube/planTube.js";
 import { goalState, halfRange } from "./certificatePicture.js";
 import type { CertifiedTube } from "./certifyMetric.js";
 import type { PlanCells } from "./planCells.js";
-import { quantityIn } from "./quantityWords.js";
+import { assumptionsOf, endOf, fixedMisfit, lawWords, verdictWords } from "./planWords.js";
 
 export interface PlanContext {
   readonly plant: Plant;
@@ -20,6 +19,8 @@ export interface PlanContext {
   readonly plan: Plan;
   readonly motion: PlanMotion;
   readonly tube: CertifiedTube;
+  /** The law's, 1/s: the tube's own or one for this plan. */
+  readonly rate: number;
   readonly window: number;
   readonly cells: PlanCells;
 }
@@ -84,7 +85,7 @@ export function planSummary(
   problems: readonly PlanProblem[],
   motionShare: number,
 ): PlanSummary {
-  const { plant, plan, tube, window, cells } = context;
+  const { plant, plan, tube, rate, window, cells } = context;
   const goal = goalName(plant);
   const names = marginNames(plant, tube);
   const along = (fixed: number, at: (row: PlanRow) => number | null): PlanValue => ({ fixed, ...overTime(rows, at) });
@@ -107,8 +108,9 @@ export function planSummary(
     problems,
     end,
     fixedMisfit: laid === null ? null : fixedMisfit(context, margins),
-    law: `least-norm tracking law at the fixed tube's contraction rate of ${shown(tube.rate)} 1/s, all along the plan`,
-    rate: tube.rate,
+    law: lawWords(rate, tube.rate),
+    rate,
+    fixedRate: tube.rate,
     window,
     evidence: "proved",
     motionShare,
@@ -138,83 +140,7 @@ function overTime(rows: readonly PlanRow[], at: (row: PlanRow) => number | null)
   return time === 0 ? { largest: null, mean: null } : { largest, mean: total / time };
 }
 
-function verdictWords(
-  status: PlanSummary["status"],
-  problems: readonly PlanProblem[],
-  end: PlanSummary["end"],
-  { name, unit, fixed, largest, mean }: PlanMargin,
-): string {
-  if (status === "refused") return `The plan is refused: ${problems.map(({ text }) => text).join("; ")}.`;
-  const until = end === null ? "" : ` From ${shown(end.time)} s on there is no number: ${end.text}.`;
-  if (largest === null || mean === null) return `No number for this plan.${until}`;
-  const range = end === null ? "all along the plan" : `up to ${shown(end.time)} s`;
-  return `The margin '${name}' is at most ${shown(largest)} ${unit} ${range}, ${shown(mean)} ${unit} on average; the fixed tube's is ${shown(fixed)} ${unit}.${until}`;
-}
-
-function endOf({ plant, plan, motion, cells }: PlanContext, end: PlanTubeEnd): NonNullable<PlanSummary["end"]> {
-  const sample = motion.sampleOf[end.step]!;
-  return { time: plan.time[sample]!, kind: end.kind, text: endWords(plant, motion, cells, end) };
-}
-
-function endWords(plant: Plant, motion: PlanMotion, cells: PlanCells, end: PlanTubeEnd): string {
-  const { stateCenter, stateHalf, inputCenter, inputHalf } = plantScaling(plant);
-  const active = activeStates(plant);
-  const step = motion.steps[end.step]!;
-  if (end.kind === "input") {
-    const input = plant.inputs[end.index]!;
-    const planned = inputCenter[end.index]! + inputHalf[end.index]! * step.inputs[end.index]!;
-    return (
-      `${quantityIn(input, planned)} is planned and tracking may need ${shown(100 * end.authority)} % of its half-range on top; ` +
-      `together they leave the range up to ${quantityIn(input, planned < inputCenter[end.index]! ? input.min : input.max)}`
-    );
-  }
-  const spanOf = (i: number): string => {
-    const state = active[i]!;
-    const at = (z: number): string =>
-      shown((stateCenter[state]! + stateHalf[state]! * z) / plant.states[state]!.unit.factor);
-    return `${plant.states[state]!.name} ${at(end.lower[i]!)} to ${at(end.upper[i]!)} ${plant.states[state]!.unit.name}`;
-  };
-  if (end.kind === "envelope") {
-    const { name, unit, min, max } = plant.states[active[end.index]!]!;
-    return `the tube reaches ${spanOf(end.index)}; the certificate covers ${name} ${shown(min / unit.factor)} to ${shown(max / unit.factor)} ${unit.name}`;
-  }
-  const leaf = cells.unproved(end.lower, end.upper);
-  const why = leaf === null ? "not proved" : `${leaf.status} (claim '${leaf.claim}')`;
-  return `the tube touches a part of the envelope that is ${why}, within ${active.map((_, i) => spanOf(i)).join(", ")}`;
-}
-
-/** The design's rule for plans under the fixed tube: the envelope less its margins, the inputs less its authority. */
-function fixedMisfit({ plant, plan, tube }: PlanContext, margins: readonly PlanMargin[]): string | null {
-  const check = (
-    quantity: Plant["inputs"][number],
-    margin: number,
-    at: (k: number) => number,
-    count: number,
-  ): string | null => {
-    const part = shrunk({ low: quantity.min, high: quantity.max }, margin);
-    if (part === null) return `the fixed margin of ${quantity.name} leaves no room for plans`;
-    for (let k = 0; k < count; k++) {
-      if (at(k) < part.low || at(k) > part.high)
-        return `${quantityIn(quantity, at(k))} at ${plan.time[k]} s; the fixed tube leaves ${shown(part.low / quantity.unit.factor)} to ${shown(part.high / quantity.unit.factor)} ${quantity.unit.name}`;
-    }
-    return null;
-  };
-  const [n, m] = [plant.states.length, plant.inputs.length];
-  const { inputHalf } = plantScaling(plant);
-  for (const i of activeStates(plant)) {
-    const state = plant.states[i]!;
-    const { fixed } = margins.find(({ name }) => name === state.name)!;
-    const text = check(state, fixed * state.unit.factor, (k) => plan.states[k * n + i]!, plan.time.length);
-    if (text !== null) return text;
-  }
-  for (const [j, input] of plant.inputs.entries()) {
-    const text = check(input, tube.authority * inputHalf[j]!, (k) => plan.inputs[k * m + j]!, plan.time.length - 1);
-    if (text !== null) return text;
-  }
-  return null;
-}
-
-export function planPicture({ plant, plan, window: _, tube }: PlanContext, rows: readonly PlanRow[]): PlanPicture {
+export function planPicture({ plant, plan, tube }: PlanContext, rows: readonly PlanRow[]): PlanPicture {
   const n = plant.states.length;
   const { rotation } = plant.symmetry;
   const samples = rows.length === 0 ? [] : Array.from({ length: rows.length + 1 }, (_value, k) => k);
@@ -236,18 +162,4 @@ export function planPicture({ plant, plan, window: _, tube }: PlanContext, rows:
           },
     planned: rotation === null ? samples.map((k) => value(k, state)) : null,
   };
-}
-
-function assumptionsOf(plant: Plant, window: number): string[] {
-  return [
-    "Law: continuous, exact state feedback by the least-norm tracking law; sampling, lag and estimate errors come on top.",
-    `Disturbance: its mean over any ${window} s stays under the bound, each channel keeps its sign within a window; within a window each channel may push at its own worst time.`,
-    "Between two samples the planned state moves as the fitted model does under the held inputs; where it arrives beside the next sample it jumps there, and the jump's length in the metric is added to the radius.",
-    "Proved: every bound on push, width and authority, over every cell that the tube can touch, given the disturbance bound and the fitted model. The plan itself is integrated in float64, its bend within a step estimated eightfold.",
-    `The tube starts within a distance of ${plant.settings.initialDistance} (metric units) of the plan.`,
-  ];
-}
-
-function shown(value: number): string {
-  return String(Number(value.toPrecision(3)));
 }

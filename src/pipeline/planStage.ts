@@ -14,7 +14,8 @@ import { planMotion } from "../tube/planSteps.js";
 import { planTube } from "../tube/planTube.js";
 import type { LeafTable } from "../verify/proof/leafTable.js";
 import type { CertifiedTube } from "./certifyMetric.js";
-import { planCells } from "./planCells.js";
+import { type PlanCells, planCells } from "./planCells.js";
+import { fastestLaw, type PlanLaw } from "./planRate.js";
 import { marginNames, planPicture, planRows, planSummary } from "./planResult.js";
 import { type SavedCertificate, tubeClaims } from "./proveTube.js";
 
@@ -26,6 +27,8 @@ export interface PlanTubeJob {
   /** Disturbance bound of the certificate's model: SI, one a leftover channel; window in s. */
   readonly disturbance: { readonly wbar: Float64Array; readonly window: number };
   readonly planPath: string;
+  /** fixed: the certificate's rate. plan: the fastest that is proved around this plan within the authority limit. */
+  readonly law: "fixed" | "plan";
   readonly progress?: (done: number, total: number, note: string) => void;
   readonly signal?: AbortSignal;
 }
@@ -52,22 +55,27 @@ export async function planTubeJob(job: PlanTubeJob): Promise<PlanTubeOutcome> {
   const { share, problem } = motionProblem(plant, plan, motion, disturbance.window, tube.sigma);
   const problems = problem === null ? ranges : [...ranges, problem];
   const cells = planCells(certificate, tubeClaims(tube, Array.from(disturbance.wbar)), boxes, model.active);
-  let asked = 0;
-  const laid =
-    problems.length > 0
-      ? null
-      : planTube({
-          steps: motion.steps,
-          rate: tube.rate,
-          window: disturbance.window,
-          initialDistance: plant.settings.initialDistance,
-          local: (lower, upper) => {
-            job.signal?.throwIfAborted();
-            if (asked++ % 64 === 0) progress(asked, motion.steps.length, `${cells.count} cells proved along the plan`);
-            return cells.local(lower, upper);
-          },
-        });
-  const context = { plant, model, plan, motion, tube, window: disturbance.window, cells };
+  const request = {
+    steps: motion.steps,
+    rate: tube.rate,
+    window: disturbance.window,
+    initialDistance: plant.settings.initialDistance,
+  };
+  const lay = (): PlanLaw => {
+    let asked = 0;
+    const local: PlanCells["local"] = (lower, upper) => {
+      job.signal?.throwIfAborted();
+      if (asked++ % 64 === 0)
+        progress(Math.min(asked / 2, motion.steps.length), motion.steps.length, `${cells.count} cells`);
+      return cells.local(lower, upper);
+    };
+    const base = planTube({ ...request, local });
+    if (job.law === "fixed") return { rate: tube.rate, laid: base };
+    return fastestLaw(request, base, cells, plant.settings.authorityLimit, progress);
+  };
+  const law = problems.length > 0 ? null : lay();
+  const laid = law?.laid ?? null;
+  const context = { plant, model, plan, motion, tube, rate: law?.rate ?? tube.rate, window: disturbance.window, cells };
   const rows = laid === null ? [] : planRows(context, laid);
   const summary = planSummary(context, laid, rows, problems, share);
   const picture: PlanPicture = planPicture(context, rows);

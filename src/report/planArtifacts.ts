@@ -22,6 +22,8 @@ export interface PlanSummary {
   /** What the numbers assume that the vehicle is steered by. */
   readonly law: string;
   readonly rate: number;
+  /** The fixed tube's. */
+  readonly fixedRate: number;
   readonly window: number;
   readonly evidence: Evidence;
   /** Largest share of the disturbance's push that the plan's own jumps reach within a window. */

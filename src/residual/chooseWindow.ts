@@ -1,8 +1,8 @@
 /**
  * The window of the disturbance bound, chosen on the fit runs alone: a short window drowns in sensor noise, a long one
  * costs the tube the factor lambda T / (1 - e^{-lambda T}). Of a fixed grid, the window with the least mean over the
- * channels of (mean peak of a run) times that factor at a reference rate. The choice moves tightness only, never
- * validity: calibration runs have no part in it.
+ * channels of (mean peak of a run) times that factor at a reference rate; windows longer than every run are left out.
+ * The choice moves tightness only, never validity: calibration runs have no part in it.
  */
 import type { Run } from "../logs/recording.js";
 import type { ControlAffineModel } from "../model/controlAffine.js";
@@ -14,13 +14,14 @@ export const WINDOW_GRID: readonly number[] = [0.1, 0.2, 0.3, 0.4, 0.5, 0.7, 1];
 /** 1/s; of the order of vehicles' tracking loops. */
 export const REFERENCE_RATE = 1;
 
+/** s; the shortest of the grid when no run holds any of them. */
 export function chooseWindow(model: ControlAffineModel, scaling: Scaling, fit: readonly Run[]): number {
-  const costs = WINDOW_GRID.map((window) => {
+  const candidates = WINDOW_GRID.flatMap((window) => {
     const factor = (REFERENCE_RATE * window) / -Math.expm1(-REFERENCE_RATE * window);
-    return channelScales(fit.map((run) => runPeaks(model, scaling, run, window))).map((scale) => scale * factor);
+    const scales = channelScales(fit.map((run) => runPeaks(model, scaling, run, window)));
+    return scales.length === 0 ? [] : [{ window, costs: scales.map((scale) => scale * factor) }];
   });
-  const p = costs[0]!.length;
-  const least = Array.from({ length: p }, (_, c) => Math.min(...costs.map((cost) => cost[c]!)));
-  const relative = costs.map((cost) => cost.reduce((sum, value, c) => sum + value / least[c]!, 0));
-  return WINDOW_GRID[relative.indexOf(Math.min(...relative))]!;
+  const least = (c: number): number => Math.min(...candidates.map(({ costs }) => costs[c]!));
+  const relative = candidates.map(({ costs }) => costs.reduce((sum, cost, c) => sum + cost / least(c), 0));
+  return candidates[relative.indexOf(Math.min(...relative))]?.window ?? WINDOW_GRID[0]!;
 }

@@ -2,8 +2,8 @@
  * The disturbance bound by split conformal prediction over runs (Vovk, Gammerman and Shafer, "Algorithmic Learning in a
  * Random World", 2005; Lei et al., JASA 113, 2018). Runs, not samples, are exchangeable: the score of a run is its worst
  * window over all channels, each channel divided by its scale on the fit runs; the bound is the
- * ceil((K+1)(1-alpha))-th smallest of the K calibration scores. A new run of the same kind stays below it throughout
- * with probability at least 1 - alpha over the draw of the runs.
+ * ceil((K+1)(1-alpha))-th smallest of the K calibration scores. A new run of the same kind stays below it throughout,
+ * as long as it is inside the envelope, with probability at least 1 - alpha over the draw of the runs.
  */
 import type { Run } from "../logs/recording.js";
 import type { ControlAffineModel } from "../model/controlAffine.js";
@@ -40,6 +40,8 @@ export interface RunScore {
   readonly score: number;
   /** Channel of the worst window. */
   readonly channel: number;
+  /** Largest window mean of each channel, SI. */
+  readonly peaks: readonly number[];
 }
 
 export interface TooFewRuns {
@@ -85,18 +87,33 @@ export function disturbanceBound(
   };
 }
 
+/** Score of a run against the scales of a bound; null for a run too short to hold a window. */
+export function scoreRun(
+  model: ControlAffineModel,
+  scaling: Scaling,
+  run: Run,
+  { window, scale }: Pick<DisturbanceBound, "window" | "scale">,
+): RunScore | null {
+  const peaks = runPeaks(model, scaling, run, window);
+  return peaks === null ? null : scoreOf(run, peaks, scale);
+}
+
 function scoreOf(run: Run, peaks: Float64Array, scale: readonly number[]): RunScore {
   let channel = 0;
   for (let c = 1; c < peaks.length; c++) if (peaks[c]! / scale[c]! > peaks[channel]! / scale[channel]!) channel = c;
-  return { run: run.id, score: peaks[channel]! / scale[channel]!, channel };
+  return { run: run.id, score: peaks[channel]! / scale[channel]!, channel, peaks: Array.from(peaks) };
 }
 
-/** Largest |window mean| of each channel over a run, SI; null for a run too short to hold a window. */
+/**
+ * Largest |window mean| of each channel over the windows of a run that lie inside the envelope throughout, SI; null when
+ * there is none. Claims are for the envelope alone, so what the model makes of states beyond it is no matter.
+ */
 export function runPeaks(model: ControlAffineModel, scaling: Scaling, run: Run, window: number): Float64Array | null {
   const peaks = new Float64Array(model.p);
   let windows = 0;
-  for (const { time, channels } of leftoverSums(model, scaling, run)) {
-    forEachWindow(time, channels, model.p, window, (mean) => {
+  for (const { time, channels, strays } of leftoverSums(model, scaling, run)) {
+    forEachWindow(time, channels, model.p, window, (mean, start, end) => {
+      if (strays[end + 1]! > strays[start]!) return;
       windows++;
       for (let c = 0; c < model.p; c++) peaks[c] = Math.max(peaks[c]!, Math.abs(mean[c]!));
     });

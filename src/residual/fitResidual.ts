@@ -1,8 +1,9 @@
 /**
  * Fits the unknown terms: one small tanh network each, trained together over windows of the fit runs (trainingWindows),
  * Huber loss (Huber, Ann. Math. Stat. 35(1), 1964) on errors in units of the prior's own, Adam (Kingma and Ba, ICLR 2015)
- * with a cosine-decaying rate, the best weights on the validation runs kept. The networks start as zero: the first
- * candidate is the prior itself.
+ * with a cosine-decaying rate, the best weights on the validation runs kept. The networks start as zero, so that the
+ * first candidate is the prior itself. From an earlier residual of the same plant only the output layers are fitted: the
+ * hidden layers hold what curves such terms have, and a few runs are enough for the rest (test/bench/refit.json).
  */
 import type * as Tf from "@tensorflow/tfjs-core";
 import type { Engine } from "../engine/openEngine.js";
@@ -62,11 +63,18 @@ const VALIDATION_SHARE = 0.2;
 const VALIDATION_WINDOWS = 512;
 const CHECK_EVERY = 50;
 const LEARNING_RATE = 1e-2;
+/** Share of the steps when it starts from an earlier residual. */
+const WARM_STEPS = 0.3;
 /** Where the loss turns from square to linear, in units of the prior's error. */
 const HUBER = 0.5;
 
-/** Throws when the fit runs hold no window, and when `signal` aborts. */
-export async function fitResidual(plant: Plant, runs: readonly Run[], services: FitServices): Promise<FittedResidual> {
+/** start: an earlier residual of the same unknown terms, or null. Throws when the fit runs hold no window, and when `signal` aborts. */
+export async function fitResidual(
+  plant: Plant,
+  runs: readonly Run[],
+  services: FitServices,
+  start: ResidualFile | null = null,
+): Promise<FittedResidual> {
   const { random, signal, progress } = services;
   const { tf } = services.engine;
   if (plant.unknowns.length === 0) {
@@ -74,12 +82,12 @@ export async function fitResidual(plant: Plant, runs: readonly Run[], services: 
     return { status: "nothingUnknown", ...none };
   }
   const windows = fitWindows(plant, runs, random);
-  const networks = termNetworks(tf, plant, windows, random);
+  const networks = termNetworks(tf, plant, windows, random, start);
   const optimizer = tf.train.adam(LEARNING_RATE);
   const draw = random.stream("windows");
   const heldOut = Array.from({ length: VALIDATION_WINDOWS }, () => windows.validation(draw));
   const lossOf = (batch: readonly Window[]): number => tf.tidy(() => networks.loss(batch).dataSync()[0]!);
-  const { steps } = plant.settings.residualNet;
+  const steps = Math.ceil((start === null ? 1 : WARM_STEPS) * plant.settings.residualNet.steps);
   const history: FitStep[] = [];
   let best = { validation: Number.POSITIVE_INFINITY, step: 0, residual: networks.toFile() };
   try {
@@ -173,13 +181,24 @@ function robustScale(errors: number[]): number {
 }
 
 /** The networks of all terms as one: their loss over windows, their weights, their saved form. */
-function termNetworks(tf: typeof Tf, plant: Plant, { shape, rates, scales }: FitWindows, random: Random) {
+function termNetworks(
+  tf: typeof Tf,
+  plant: Plant,
+  { shape, rates, scales }: FitWindows,
+  random: Random,
+  start: ResidualFile | null,
+) {
   const { unknowns } = plant;
   const { width } = plant.settings.residualNet;
   const { inputHalf } = plantScaling(plant);
   const nodes = shape.length / shape.stride + 1;
   const terms = unknowns.map((term, j) => {
     const features = featuresOf(plant, term.dependsOn);
+    const from = start?.terms[j];
+    if (from !== undefined) {
+      const { outputScale } = from;
+      return { features, rate: rates.indexOf(term.state), outputScale, net: trainableMlp(tf, from.mlp) };
+    }
     return {
       features,
       rate: rates.indexOf(term.state),
@@ -221,7 +240,7 @@ function termNetworks(tf: typeof Tf, plant: Plant, { shape, rates, scales }: Fit
   };
   return {
     loss,
-    variables: terms.flatMap(({ net }) => net.variables),
+    variables: terms.flatMap(({ net }) => (start === null ? net.variables : net.variables.slice(-2))),
     toFile: (): ResidualFile => ({
       terms: unknowns.map(({ state, input }, j) => {
         const { features, net, outputScale } = terms[j]!;

@@ -20,6 +20,8 @@ export interface LeftoverSums {
   readonly rates: Float64Array;
   /** N x n, scaled: e - G w. */
   readonly outside: Float64Array;
+  /** N + 1: how many of the samples before this one lie outside the envelope in an active state. */
+  readonly strays: Int32Array;
 }
 
 export function leftoverSums(model: ControlAffineModel, scaling: Scaling, run: Run): LeftoverSums[] {
@@ -35,10 +37,13 @@ export function leftoverSums(model: ControlAffineModel, scaling: Scaling, run: R
     const channels = new Float64Array(count * p);
     const rates = new Float64Array(count * n);
     const outside = new Float64Array(count * n);
+    const strays = new Int32Array(count + 1);
     const load = (k: number): void => {
       const target = z[(k & 1) as 0 | 1];
       for (let i = 0; i < n; i++) target[i] = (states[k * n + i]! - scaling.stateCenter[i]!) / scaling.stateHalf[i]!;
       model.evaluate(target, points[(k & 1) as 0 | 1]);
+      const isStray = model.active.some((i) => Math.abs(target[i]!) > 1);
+      strays[k + 1] = strays[k]! + (isStray ? 1 : 0);
     };
     if (count > 0) load(0);
     for (let k = 0; k + 1 < count; k++) {
@@ -63,7 +68,7 @@ export function leftoverSums(model: ControlAffineModel, scaling: Scaling, run: R
         outside[(k + 1) * n + i] = outside[k * n + i]! + rest;
       }
     }
-    return { time, channels, rates, outside };
+    return { time, channels, rates, outside, strays };
   });
 }
 

@@ -8,7 +8,7 @@
  * disturbance may push in that window.
  */
 import type { Piece } from "../logs/recording.js";
-import type { Plant } from "../plant/plant.js";
+import type { Plant, Unit } from "../plant/plant.js";
 import { activeStates, plantScaling } from "../plant/scaling.js";
 import type { PlanMotion } from "./planSteps.js";
 
@@ -46,8 +46,8 @@ export function rangeProblems(plant: Plant, { time, states, inputs }: Piece): Pl
     const of = (value: number): number => value / unit.factor;
     const allowed = [of(min), of(max)] as const;
     const text =
-      `${name} is ${shown(of(at(k)))} ${unit.name} at ${time[k]} s (row ${k + 1}); ` +
-      `the certificate covers ${shown(allowed[0])} to ${shown(allowed[1])} ${unit.name}`;
+      `${name} is ${shown(of(at(k)), unit)} at ${shown(time[k]!)} s (row ${k + 1}); ` +
+      `the certificate covers ${shown(allowed[0])} to ${shown(allowed[1], unit)}`;
     return [{ kind, name, unit: unit.name, row: k + 1, time: time[k]!, value: of(at(k)), allowed, text }];
   };
   return [
@@ -96,12 +96,13 @@ function motionText(plant: Plant, time: Float64Array, defects: Float64Array, k: 
   const { name, unit } = plant.states[state]!;
   const value = (defects[k * n + state]! * stateHalf[state]!) / unit.factor;
   const text =
-    `the plan is no motion of the fitted model: ${name} at ${time[k]} s (row ${k + 1}) is ${shown(value)} ${unit.name} beyond where the ` +
+    `the plan is no motion of the fitted model: ${name} at ${shown(time[k]!)} s (row ${k + 1}) is ${shown(value, unit)} beyond where the ` +
     `model arrives from the row before with the inputs held; such jumps push up to ${shown(share)} times as hard as the ` +
-    `disturbance bound, ${MOTION_LIMIT} is allowed. Plan on the fitted model, with inputs held from row to row, and check units and columns`;
+    `disturbance bound, ${MOTION_LIMIT} is allowed. Plan on the fitted model, with inputs held from row to row, write all digits, and check units and columns`;
   return { kind: "motion", name, unit: unit.name, row: k + 1, time: time[k]!, value, allowed: null, text };
 }
 
-function shown(value: number): string {
-  return String(Number(value.toPrecision(4)));
+function shown(value: number, unit: Unit | null = null): string {
+  const text = String(Number(value.toPrecision(6)));
+  return unit === null || unit.name === "1" ? text : `${text} ${unit.name}`;
 }

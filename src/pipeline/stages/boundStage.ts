@@ -36,6 +36,10 @@ export const boundStage: Stage = {
       window,
       bounds: { fitted: fitted.bound, prior: prior.bound },
       quantile: fitted.quantile,
+      scale: fitted.scale,
+      heldOut: (["calibration", "test"] as const).flatMap((part) =>
+        fitted.scores[part].map(({ run, score, peaks }) => ({ part, run, score, peaks })),
+      ),
       calibrationScores: fitted.scores.calibration.map(({ score }) => score),
       testScores: fitted.scores.test.map(({ score }) => score),
       testShareCovered: fitted.testShareCovered,
