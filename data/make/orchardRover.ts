@@ -15,9 +15,9 @@ export const EMPTY_TANK: RoverSoil = {
 };
 /** The hardware change: a full spray tank. Deeper tracks, a heavier tail. */
 export const FULL_TANK: RoverSoil = {
-  drag: (v) => 0.24 + 0.13 * v * v,
-  turnGain: (v) => 0.93 / (1 + 0.2 * v * v),
-  disturbance: [0.01, 0.012, 0.006, 0.018],
+  drag: (v) => 0.2 + 0.12 * v * v,
+  turnGain: (v) => 0.97 / (1 + 0.14 * v * v),
+  disturbance: [0.008, 0.009, 0.005, 0.015],
 };
 
 export function orchardRover(soil: RoverSoil): Truth {

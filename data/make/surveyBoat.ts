@@ -21,10 +21,10 @@ export const BARE_HULL: BoatHull = {
 };
 /** The hardware change: a sensor pod under the keel. More drag, and the couplings move. */
 export const WITH_POD: BoatHull = {
-  surge: [0.24, 1],
-  sway: [1.6, 0.4],
-  yaw: [1.2, 0.55],
-  disturbance: [0.005, 0.004, 0.004],
+  surge: [0.2, 0.9],
+  sway: [1.4, 0.3],
+  yaw: [1.1, 0.42],
+  disturbance: [0.004, 0.003, 0.003],
 };
 
 /** Low end and width of the first surge, sway (m/s) and yaw rate (rad/s). */

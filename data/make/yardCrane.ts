@@ -12,7 +12,7 @@ export interface CraneHook {
 
 export const LIGHT_HOOK: CraneHook = { rope: 6.8, damping: [0.06, 0.2], disturbance: [0.006, 0.003] };
 /** The hardware change: another hook block. The load hangs lower and sways against more drag. */
-export const HEAVY_HOOK: CraneHook = { rope: 7.6, damping: [0.1, 0.35], disturbance: [0.006, 0.004] };
+export const HEAVY_HOOK: CraneHook = { rope: 7.4, damping: [0.08, 0.28], disturbance: [0.006, 0.003] };
 
 const GRAVITY = 9.80665;
 

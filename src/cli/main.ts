@@ -10,7 +10,7 @@ import { RunFolderError } from "../pipeline/runFolder.js";
 import { FAIRLEAD_VERSION } from "../pipeline/version.js";
 import { doctor } from "./doctor.js";
 import { InputError } from "./inputError.js";
-import { recheckCommand, runCommand, stageCommand } from "./runCommand.js";
+import { lineageCommand, recheckCommand, refitCommand, runCommand, stageCommand } from "./runCommand.js";
 
 export type ExitStatus = 0 | 1 | 2 | 3;
 
@@ -89,6 +89,19 @@ function describe(streams: Streams, signal: AbortSignal, finish: (status: ExitSt
     );
   }
   common(
+    program.command("refit <dir>").description("new logs after a hardware change: test for a change, refit, compare"),
+  )
+    .requiredOption("--logs <files...>", "the new log files, with the columns of the plant file")
+    .requiredOption("--out <dir>", "run folder of the refit")
+    .option("--always", "refit although no change is found", false)
+    .option("--seed <n>", "seed of everything random; default: the earlier run's", wholeNumber)
+    .action(async (dir: string, options: RefitOptions) => finish(await refitCommand(dir, options, streams, signal)));
+  program
+    .command("lineage <dir>")
+    .description("a run, the run that it refits, and so on")
+    .option("--json", "print the machine form to standard output", false)
+    .action((dir: string, options: { json: boolean }) => finish(lineageCommand(dir, options, streams)));
+  common(
     program.command("recheck <dir>").description("prove a stored certificate again from its artifacts alone"),
   ).action((dir: string, options: Omit<RunOptions, "out">) => finish(recheckCommand(dir, options, streams)));
   program
@@ -99,6 +112,8 @@ function describe(streams: Streams, signal: AbortSignal, finish: (status: ExitSt
   for (const command of program.commands) command.exitOverride().copyInheritedSettings(program);
   return program;
 }
+
+type RefitOptions = RunOptions & { readonly logs: readonly string[]; readonly always: boolean };
 
 export interface RunOptions {
   readonly out: string;

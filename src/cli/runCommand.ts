@@ -4,9 +4,11 @@ import { availableParallelism } from "node:os";
 import { resolve } from "node:path";
 import { FILES } from "../pipeline/artifacts.js";
 import { type JobOutcome, runJob, runOneStage } from "../pipeline/job.js";
+import { lineageOf } from "../pipeline/lineage.js";
 import { recheckRun } from "../pipeline/recheckRun.js";
-import { type Manifest, openRunFolder, type RunFolder } from "../pipeline/runFolder.js";
-import type { Stage, StageOutcome } from "../pipeline/stage.js";
+import { runRefit } from "../pipeline/refit.js";
+import { type Manifest, openRunFolder, type RunFolder, runDigest } from "../pipeline/runFolder.js";
+import type { ParentRun, Stage, StageOutcome } from "../pipeline/stage.js";
 import { codeHash } from "../pipeline/version.js";
 import type { Plant } from "../plant/plant.js";
 import { formatProblems, readPlant } from "../plant/readPlant.js";
@@ -43,6 +45,54 @@ export async function runCommand(
   return conclude(outcome, options, streams, folder);
 }
 
+/** `fairlead refit DIR --logs NEW... --out DIR2`. */
+export async function refitCommand(
+  dir: string,
+  options: RunOptions & { readonly logs: readonly string[]; readonly always: boolean },
+  streams: Streams,
+  signal: AbortSignal,
+): Promise<ExitStatus> {
+  const { loaded, manifest } = openRun(dir);
+  const files = options.logs.map((path) => resolve(path));
+  const folder = openRunFolder(resolve(options.out), true);
+  if (folder.path === resolve(dir)) throw new InputError(`--out: given the earlier run folder ${dir}; give a new one`);
+  const progress = options.quiet ? silentProgress : terminalProgress(streams.err);
+  const change = await runRefit({
+    ...job(loaded, folder, { seed: options.seed ?? manifest.seed }, signal),
+    plant: { ...loaded.plant, logs: { ...loaded.plant.logs, files } },
+    parent: parentRun(resolve(dir)),
+    isForced: options.always,
+    progress: progress.update,
+    finished: (stage) => {
+      progress.settle();
+      if (!options.quiet) streams.err.write(stageLine(stage));
+    },
+  });
+  progress.settle();
+  if (options.json) streams.out.write(`${JSON.stringify(change, null, 1)}\n`);
+  streams.err.write(`\n${change.drift.join("\n")}\n`);
+  if (change.refit === null) {
+    streams.err.write(`nothing was refitted; --always refits all the same\npage: ${folder.file(FILES.changePage)}\n`);
+    return 0;
+  }
+  const status = conclude({ summary: folder.readJson(FILES.summary) }, { ...options, json: false }, streams, folder);
+  streams.err.write(`${change.refit.planner.text}\npage: ${folder.file(FILES.changePage)}\n`);
+  return status;
+}
+
+/** `fairlead lineage DIR`: the run, the run that it refits, and so on. */
+export function lineageCommand(dir: string, options: { json: boolean }, streams: Streams): ExitStatus {
+  const lineage = lineageOf(openRunFolder(resolve(dir), false));
+  if (options.json) streams.out.write(`${JSON.stringify(lineage, null, 1)}\n`);
+  else streams.out.write(`${lineage.map(({ path, text }) => `${path}\n  ${text}`).join("\n")}\n`);
+  return 0;
+}
+
+function parentRun(path: string): ParentRun {
+  const { folder, manifest } = openRun(path);
+  return { folder, path: folder.path, digest: runDigest(manifest) };
+}
+
 /** `fairlead recheck DIR`. */
 export function recheckCommand(dir: string, options: { json: boolean; quiet: boolean }, streams: Streams): ExitStatus {
   const { folder, loaded } = openRun(dir);
@@ -76,6 +126,7 @@ export async function stageCommand(
   const progress = options.quiet ? silentProgress : terminalProgress(streams.err);
   const outcome = await runOneStage(stage, {
     ...job(loaded, folder, { seed: manifest.seed }, signal),
+    parent: manifest.parent === null ? null : parentRun(manifest.parent.path),
     progress: progress.update,
     finished: () => progress.settle(),
   });
@@ -94,6 +145,7 @@ function job(loaded: LoadedPlant, folder: RunFolder, options: { seed?: number | 
     folder,
     seed: options.seed ?? loaded.plant.settings.seed,
     runtime: `node ${process.version}`,
+    parent: null as ParentRun | null,
     code: codeHash(),
     workers: availableParallelism(),
     signal,

@@ -19,8 +19,8 @@ export function splitRuns(
   const calibration = Math.round(shares.calibration * count);
   const test = Math.round(shares.test * count);
   const fit = count - calibration - test;
-  if (fit < 2 || calibration < 1 || test < 1) {
-    const needed = Math.ceil(Math.max(2 / shares.fit, 1 / shares.calibration, 1 / shares.test));
+  if (fit < 2 || calibration < 1 || (test < 1 && shares.test > 0)) {
+    const needed = Math.ceil(Math.max(2 / shares.fit, 1 / shares.calibration, shares.test > 0 ? 1 / shares.test : 0));
     throw new LogError(
       [...new Set(runs.map((run) => run.file))].join(", "),
       null,

@@ -11,6 +11,9 @@ import { splitFromColumns } from "./samplesTable.js";
 
 export const FILES = {
   plant: "plant.yaml",
+  drift: "drift.json",
+  change: "change.json",
+  changePage: "change.html",
   samples: "samples.arrow",
   intake: "intake.json",
   residual: "residual.json",

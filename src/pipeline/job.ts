@@ -49,7 +49,7 @@ export async function runOneStage(stage: Stage, request: JobRequest): Promise<St
   return outcome;
 }
 
-function onceOpened(): () => Promise<Engine> {
+export function onceOpened(): () => Promise<Engine> {
   let opened: Promise<Engine> | null = null;
   return () => {
     opened ??= openEngine();

@@ -19,6 +19,8 @@ export interface PlanContext {
   readonly plan: Plan;
   readonly motion: PlanMotion;
   readonly tube: CertifiedTube;
+  /** Whether the fixed tube holds all over the envelope. */
+  readonly fixedHolds: boolean;
   /** The law's, 1/s: the tube's own or one for this plan. */
   readonly rate: number;
   readonly window: number;
@@ -85,10 +87,13 @@ export function planSummary(
   problems: readonly PlanProblem[],
   motionShare: number,
 ): PlanSummary {
-  const { plant, plan, tube, rate, window, cells } = context;
+  const { plant, plan, tube, fixedHolds, rate, window, cells } = context;
   const goal = goalName(plant);
   const names = marginNames(plant, tube);
-  const along = (fixed: number, at: (row: PlanRow) => number | null): PlanValue => ({ fixed, ...overTime(rows, at) });
+  const along = (fixed: number, at: (row: PlanRow) => number | null): PlanValue => ({
+    fixed: fixedHolds ? fixed : null,
+    ...overTime(rows, at),
+  });
   const margins = names.map(
     ({ name, unit, half }, s): PlanMargin => ({
       name,
@@ -107,7 +112,8 @@ export function planSummary(
     text: verdictWords(status, problems, end, asked),
     problems,
     end,
-    fixedMisfit: laid === null ? null : fixedMisfit(context, margins),
+    fixedHolds,
+    fixedMisfit: laid === null || !fixedHolds ? null : fixedMisfit(context, margins),
     law: lawWords(rate, tube.rate),
     rate,
     fixedRate: tube.rate,
@@ -140,7 +146,7 @@ function overTime(rows: readonly PlanRow[], at: (row: PlanRow) => number | null)
   return time === 0 ? { largest: null, mean: null } : { largest, mean: total / time };
 }
 
-export function planPicture({ plant, plan, tube }: PlanContext, rows: readonly PlanRow[]): PlanPicture {
+export function planPicture({ plant, plan, tube, fixedHolds }: PlanContext, rows: readonly PlanRow[]): PlanPicture {
   const n = plant.states.length;
   const { rotation } = plant.symmetry;
   const samples = rows.length === 0 ? [] : Array.from({ length: rows.length + 1 }, (_value, k) => k);
@@ -148,7 +154,7 @@ export function planPicture({ plant, plan, tube }: PlanContext, rows: readonly P
   const state = goalState(plant, plant.settings.goal);
   return {
     rows,
-    fixedSigma: tube.sigma,
+    fixedSigma: fixedHolds ? tube.sigma : null,
     path:
       rotation === null
         ? null

@@ -23,6 +23,8 @@ export interface PlanTubeJob {
   readonly certificate: SavedCertificate;
   /** The certificate's fixed tube, and the leaf boxes of its proof (be it of a part only). */
   readonly tube: CertifiedTube;
+  /** Whether the fixed tube holds all over the envelope: its numbers are shown only then. */
+  readonly fixedHolds: boolean;
   readonly boxes: LeafTable;
   /** Disturbance bound of the certificate's model: SI, one a leftover channel; window in s. */
   readonly disturbance: { readonly wbar: Float64Array; readonly window: number };
@@ -45,7 +47,7 @@ export interface PlanTubeOutcome {
  * the summary, by name, time and value.
  */
 export async function planTubeJob(job: PlanTubeJob): Promise<PlanTubeOutcome> {
-  const { certificate, tube, boxes, disturbance, planPath } = job;
+  const { certificate, tube, fixedHolds, boxes, disturbance, planPath } = job;
   const { plant, residual, metric } = certificate;
   const progress = job.progress ?? (() => undefined);
   const model = fittedModel(plant, residual);
@@ -75,7 +77,17 @@ export async function planTubeJob(job: PlanTubeJob): Promise<PlanTubeOutcome> {
   };
   const law = problems.length > 0 ? null : lay();
   const laid = law?.laid ?? null;
-  const context = { plant, model, plan, motion, tube, rate: law?.rate ?? tube.rate, window: disturbance.window, cells };
+  const context = {
+    plant,
+    model,
+    plan,
+    motion,
+    tube,
+    fixedHolds,
+    rate: law?.rate ?? tube.rate,
+    window: disturbance.window,
+    cells,
+  };
   const rows = laid === null ? [] : planRows(context, laid);
   const summary = planSummary(context, laid, rows, problems, share);
   const picture: PlanPicture = planPicture(context, rows);

@@ -18,8 +18,12 @@ export function verdictWords(
   const until = end === null ? "" : ` From ${seconds(end.time)} on there is no number: ${end.text}.`;
   if (largest === null || mean === null) return `No number for this plan.${until}`;
   const span = end === null ? "all along the plan" : `up to ${seconds(end.time)}`;
-  const [most, usual, usually] = [largest, mean, fixed].map((value) => quantity(value, unit, "up"));
-  return `The margin '${name}' is at most ${most} ${span}, ${usual} on average; the fixed tube's is ${usually}.${until}`;
+  const [most, usual] = [largest, mean].map((value) => quantity(value, unit, "up"));
+  const beside =
+    fixed === null
+      ? "the certificate fails elsewhere and gives no fixed margin"
+      : `the fixed tube's is ${quantity(fixed, unit, "up")}`;
+  return `The margin '${name}' is at most ${most} ${span}, ${usual} on average; ${beside}.${until}`;
 }
 
 export function lawWords(rate: number, fixedRate: number): string {
@@ -88,8 +92,8 @@ export function fixedMisfit({ plant, plan, tube }: PlanContext, margins: readonl
   const { inputHalf } = plantScaling(plant);
   for (const i of activeStates(plant)) {
     const state = plant.states[i]!;
-    const { fixed } = margins.find(({ name }) => name === state.name)!;
-    const text = check(state, fixed * state.unit.factor, (k) => plan.states[k * n + i]!, plan.time.length);
+    const fixed = margins.find(({ name }) => name === state.name)!.fixed! * state.unit.factor;
+    const text = check(state, fixed, (k) => plan.states[k * n + i]!, plan.time.length);
     if (text !== null) return text;
   }
   for (const [j, input] of plant.inputs.entries()) {

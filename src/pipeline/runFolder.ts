@@ -35,6 +35,8 @@ export interface Manifest {
   /** SHA-256 of the plant file and of every log, by name. */
   readonly inputs: Readonly<Record<string, string>>;
   readonly seed: number;
+  /** The run that this one refits. */
+  readonly parent: { readonly path: string; readonly digest: string } | null;
   readonly engine: { readonly name: string; readonly version: string } | null;
   readonly stages: Readonly<Record<string, StageRecord>>;
 }
@@ -106,6 +108,12 @@ export function openRunFolder(path: string, create: boolean): RunFolder {
     manifest: () => (existsSync(file(MANIFEST)) ? readJson<Manifest>(MANIFEST) : null),
     writeManifest: (manifest) => writeJson(MANIFEST, manifest),
   };
+}
+
+/** Hash over what the stages of a run made, but for the report, which holds wall seconds. */
+export function runDigest({ stages }: Manifest): string {
+  const made = Object.entries(stages).filter(([name]) => name !== "report");
+  return sha256(JSON.stringify(made.map(([name, { files }]) => [name, files])));
 }
 
 export function sha256(data: string | Uint8Array): string {

@@ -7,7 +7,16 @@ import type { Plant } from "../plant/plant.js";
 import { type Manifest, type RunFolder, RunFolderError, sha256 } from "./runFolder.js";
 import { FAIRLEAD_VERSION } from "./version.js";
 
-export type StageName = "intake" | "residual" | "bound" | "analytic" | "metric" | "certify" | "report";
+export type StageName =
+  | "drift"
+  | "change"
+  | "intake"
+  | "residual"
+  | "bound"
+  | "analytic"
+  | "metric"
+  | "certify"
+  | "report";
 
 export interface StageContext {
   readonly folder: RunFolder;
@@ -21,10 +30,19 @@ export interface StageContext {
   readonly engine: () => Promise<Engine>;
   readonly progress: (stage: StageName, done: number, total: number, note: string) => void;
   readonly signal: AbortSignal;
+  /** The run that this one refits; null for a run of its own. */
+  readonly parent: ParentRun | null;
   /** Hash of the tool's own code. */
   readonly code: string;
   /** Worker threads for proofs; the outcome is the same for any number. */
   readonly workers: number;
+}
+
+export interface ParentRun {
+  readonly folder: RunFolder;
+  /** As written down in the manifest: its path, and a hash over what its stages made. */
+  readonly path: string;
+  readonly digest: string;
 }
 
 export interface Stage {
@@ -66,6 +84,7 @@ export async function runStage(stage: Stage, context: StageContext, force: boole
       context.seed,
       sha256(context.plantText),
       engine === null ? null : [engine.name, engine.version],
+      context.parent?.digest ?? null,
       sources,
       stage.reads.map((name) => folder.hash(name)),
     ]),
@@ -91,6 +110,7 @@ export async function runStage(stage: Stage, context: StageContext, force: boole
     plantPath: context.plantPath,
     inputs: { ...before?.inputs, ...sources, plant: sha256(context.plantText) },
     seed: context.seed,
+    parent: context.parent === null ? null : { path: context.parent.path, digest: context.parent.digest },
     engine: engine === null ? (before?.engine ?? null) : { name: engine.name, version: engine.version },
     stages: { ...before?.stages, [stage.name]: { inputs, files, seconds } },
   };

@@ -121,7 +121,7 @@ const disturbance = z
       .strictObject({
         fit: share.default(0.5).describe("share of the runs that the residual is fitted on"),
         calibration: share.default(0.3).describe("share of the runs that the bound is taken from"),
-        test: share.default(0.2).describe("share of the runs kept for the report"),
+        test: z.number().min(0).lt(1).default(0.2).describe("share of the runs kept for the report; 0: none"),
       })
       .prefault({})
       .describe("shares of the runs; they add up to 1"),

@@ -17,7 +17,9 @@ export interface PlanSummary {
   readonly problems: readonly PlanProblem[];
   /** Why there is no number from a time on; null: there is one to the end. */
   readonly end: { readonly time: number; readonly kind: "envelope" | "cells" | "input"; readonly text: string } | null;
-  /** Why the plan would not fit with the fixed margins; null: it would. */
+  /** False: the certificate fails somewhere, so there is no fixed tube; this plan keeps to where it is proved. */
+  readonly fixedHolds: boolean;
+  /** Why the plan would not fit with the fixed margins; null: it would, or there are none. */
   readonly fixedMisfit: string | null;
   /** What the numbers assume that the vehicle is steered by. */
   readonly law: string;
@@ -37,9 +39,9 @@ export interface PlanSummary {
   readonly assumptions: readonly string[];
 }
 
-/** A number of the fixed tube beside those along the plan; null without a step that has one. */
+/** A number of the fixed tube, null without one, beside those along the plan, null without a step that has one. */
 export interface PlanValue {
-  readonly fixed: number;
+  readonly fixed: number | null;
   readonly largest: number | null;
   /** Over time. */
   readonly mean: number | null;
@@ -64,7 +66,7 @@ export interface PlanRow {
 export interface PlanPicture {
   /** Empty when refused. */
   readonly rows: readonly PlanRow[];
-  readonly fixedSigma: number;
+  readonly fixedSigma: number | null;
   /** With a planar rotation: the planned positions in `unit`, headings in rad, one a row and one for the end. */
   readonly path: {
     readonly unit: string;

@@ -15,8 +15,8 @@ interface Curve {
   readonly axis: string;
   /** One value a row; null leaves a gap. */
   readonly values: readonly (number | null)[];
-  /** Level lines: the fixed tube's number first. */
-  readonly fixed: number;
+  /** Level lines. */
+  readonly fixed: number | null;
   readonly limit: number | null;
   readonly write: (value: number) => string;
   readonly words: { readonly along: string; readonly fixed: string; readonly limit: string };
@@ -74,7 +74,7 @@ export async function planCharts(summary: PlanSummary, picture: PlanPicture): Pr
       title: "Authority over time",
       axis: "authority (% of the inputs' half-range)",
       values: rows.map(({ authority }) => 100 * authority),
-      fixed: 100 * summary.authority.fixed,
+      fixed: summary.authority.fixed === null ? null : 100 * summary.authority.fixed,
       limit: 100 * summary.authority.limit,
       write: (value) => share(value / 100, "up"),
       words: { ...usual, limit: "authority limit" },
@@ -90,7 +90,7 @@ async function curveFigure(curve: Curve, rows: PlanPicture["rows"], until: numbe
   const known = values.filter((value) => value !== null);
   const points = rows.map(({ time }, k) => ({ time, value: values[k] ?? null }));
   const last = rows.at(-1)!;
-  const top = 1.08 * Math.max(fixed, limit ?? 0, ...known, Number.MIN_VALUE);
+  const top = 1.08 * Math.max(fixed ?? 0, limit ?? 0, ...known, Number.MIN_VALUE);
   const x = {
     field: "time",
     type: "quantitative",
@@ -106,7 +106,7 @@ async function curveFigure(curve: Curve, rows: PlanPicture["rows"], until: numbe
   const picture = await vegaChart(
     {
       layer: [
-        level(fixed, SECOND, FIXED_DASH),
+        ...(fixed === null ? [] : [level(fixed, SECOND, FIXED_DASH)]),
         ...(limit === null ? [] : [level(limit, LIMIT, LIMIT_DASH)]),
         {
           data: { values: [...points, { time: last.until, value: values.at(-1) ?? null }] },
@@ -121,14 +121,17 @@ async function curveFigure(curve: Curve, rows: PlanPicture["rows"], until: numbe
         },
       ],
     },
-    { key: curve.key, label: `${curve.title}. ${spanWords(known, write)}; ${words.fixed} ${write(fixed)}.` },
+    {
+      key: curve.key,
+      label: `${curve.title}. ${spanWords(known, write)}${fixed === null ? "" : `; ${words.fixed} ${write(fixed)}`}.`,
+    },
   );
   return figure({
     title: curve.title,
     picture,
     legend: legend([
       { swatch: lineSwatch(FIRST, []), text: words.along },
-      { swatch: lineSwatch(SECOND, FIXED_DASH), text: `${words.fixed}, ${write(fixed)}` },
+      ...(fixed === null ? [] : [{ swatch: lineSwatch(SECOND, FIXED_DASH), text: `${words.fixed}, ${write(fixed)}` }]),
       ...(limit === null ? [] : [{ swatch: lineSwatch(LIMIT, LIMIT_DASH), text: `${words.limit}, ${write(limit)}` }]),
     ]),
     shows: curve.shows,

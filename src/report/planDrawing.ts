@@ -1,8 +1,7 @@
 /**
- * The plan with its tube to scale. In the plane: around every planned position the disc or the body-frame rectangle that its
- * margin gives, drawn as the band that they sweep. Else: the planned value of the asked state over time with its margin.
+ * The plan with its tube to scale. In the plane: the band that the discs of the margin 'planar' sweep along the plan. Else: the planned value of the asked state over time with its margin.
  */
-import { boxSwatch, figure, legend, lineSwatch } from "./figure.js";
+import { boxSwatch, figure, type LegendItem, legend, lineSwatch } from "./figure.js";
 import { niceStep, quantity } from "./format.js";
 import { type Markup, markup } from "./markup.js";
 import type { PlanPicture, PlanSummary } from "./planArtifacts.js";
@@ -27,13 +26,15 @@ interface Part {
 
 function pathDrawing(summary: PlanSummary, { rows }: PlanPicture, path: NonNullable<PlanPicture["path"]>): Markup {
   const at = summary.margins.findIndex(({ name }) => name === "planar");
-  const { fixed, largest } = summary.margins[at]!;
+  const { fixed } = summary.margins[at]!;
   const { points, unit } = path;
+  // every row has this margin: it covers any heading
+  const halves = rows.map(({ margins }) => margins[at]!);
   const parts = partsOf(
     points.map(({ x, y }): Point => [x, y]),
-    rows.map(({ margins }) => margins[at] ?? fixed),
+    halves,
   );
-  const reach = Math.max(fixed, ...parts.map(({ half }) => half));
+  const reach = Math.max(fixed ?? 0, ...halves);
   const [left, right] = [Math.min(...points.map(({ x }) => x)) - reach, Math.max(...points.map(({ x }) => x)) + reach];
   const [low, high] = [Math.min(...points.map(({ y }) => y)) - reach, Math.max(...points.map(({ y }) => y)) + reach];
   const scale = Math.min((CHART_WIDTH - 2 * PAD) / (right - left), TALLEST / (high - low));
@@ -47,9 +48,9 @@ function pathDrawing(summary: PlanSummary, { rows }: PlanPicture, path: NonNulla
   const barEnd = CHART_WIDTH - PAD;
   const barStart = barEnd - bar * scale;
   const barY = height + 8;
-  const widest = quantity(largest ?? fixed, unit, "up");
-  const drawing = markup`<svg xmlns="http://www.w3.org/2000/svg" class="chart" role="img" aria-label="${`The plan with its tube to scale. Half-width along the plan at most ${widest}; the fixed tube's is ${quantity(fixed, unit, "up")}.`}" viewBox="0 0 ${CHART_WIDTH} ${pixel(height + 22)}">
-<g fill="${SECOND}" fill-opacity="0.3"><path d="${band(() => fixed)}"/></g>
+  const widest = quantity(Math.max(...halves), unit, "up");
+  const drawing = markup`<svg xmlns="http://www.w3.org/2000/svg" class="chart" role="img" aria-label="${`The plan with its tube to scale. Half-width along the plan at most ${widest}${besideFixed(fixed, unit)}.`}" viewBox="0 0 ${CHART_WIDTH} ${pixel(height + 22)}">
+${fixed === null ? null : markup`<g fill="${SECOND}" fill-opacity="0.3"><path d="${band(() => fixed)}"/></g>`}
 <g fill="${FIRST}"><path d="${band(({ half }) => half)}"/></g>
 <path d="${polyline(points.map(({ x, y }) => place([x, y])))}" fill="none" stroke="var(--panel)" stroke-width="1"/>
 <path d="M${pixel(barStart)} ${pixel(barY - 4)}v8m0 -4H${pixel(barEnd)}m0 -4v8" fill="none" stroke="var(--ink)" stroke-width="1.5"/>
@@ -60,7 +61,7 @@ function pathDrawing(summary: PlanSummary, { rows }: PlanPicture, path: NonNulla
     picture: drawing,
     legend: legend([
       { swatch: boxSwatch(FIRST), text: `tube along the plan, at most ±\u00a0${widest}` },
-      { swatch: boxSwatch(SECOND), text: `fixed tube, ±\u00a0${quantity(fixed, unit, "up")}` },
+      ...fixedItem(fixed, unit),
     ]),
     shows:
       "Plan, tubes and scale bar share one scale. Half-widths are the margin 'planar': around every planned position a disc, swept along the plan.",
@@ -98,8 +99,9 @@ function polygons(outlines: readonly (readonly Point[])[]): Markup {
 
 async function valueDrawing(summary: PlanSummary, { rows, planned }: PlanPicture): Promise<Markup> {
   const at = summary.margins.findIndex(({ name }) => name === summary.goal);
-  const { name, unit, fixed, largest } = summary.margins[at]!;
+  const { name, unit, fixed } = summary.margins[at]!;
   const values = planned ?? [];
+  const halves = rows.map(({ margins }) => margins[at]!);
   const band = (half: (k: number) => number) =>
     rows.flatMap(({ time, until }, k) =>
       [
@@ -128,8 +130,8 @@ async function valueDrawing(summary: PlanSummary, { rows, planned }: PlanPicture
   const picture = await vegaChart(
     {
       layer: [
-        area(() => fixed, SECOND, 0.3),
-        area((k) => rows[k]!.margins[at] ?? fixed, FIRST, 1),
+        ...(fixed === null ? [] : [area(() => fixed, SECOND, 0.3)]),
+        area((k) => halves[k]!, FIRST, 1),
         {
           data: { values: line },
           mark: { type: "line", color: "var(--panel)", strokeWidth: 1 },
@@ -139,7 +141,7 @@ async function valueDrawing(summary: PlanSummary, { rows, planned }: PlanPicture
     },
     {
       key: "plan-band",
-      label: `Planned ${name} over time with its margin, at most ${quantity(largest ?? fixed, unit, "up")} on both sides; the fixed tube's is ${quantity(fixed, unit, "up")}.`,
+      label: `Planned ${name} over time with its margin, at most ${quantity(Math.max(...halves), unit, "up")} on both sides${besideFixed(fixed, unit)}.`,
     },
   );
   return figure({
@@ -147,11 +149,21 @@ async function valueDrawing(summary: PlanSummary, { rows, planned }: PlanPicture
     picture,
     legend: legend([
       { swatch: boxSwatch(FIRST), text: "tube along the plan" },
-      { swatch: boxSwatch(SECOND), text: `fixed tube, ±\u00a0${quantity(fixed, unit, "up")}` },
+      ...fixedItem(fixed, unit),
       { swatch: lineSwatch("var(--muted)", []), text: "plan, in the middle" },
     ]),
     shows: `How far ${name} can be from its plan at any time, on both sides, in ${unit}.`,
     showsNot: "The other states, whose margins are in the table, nor the machine's own outline.",
     isAlone: true,
   });
+}
+
+function besideFixed(fixed: number | null, unit: string): string {
+  return fixed === null ? "" : `; the fixed tube's is ${quantity(fixed, unit, "up")}`;
+}
+
+function fixedItem(fixed: number | null, unit: string): LegendItem[] {
+  return fixed === null
+    ? []
+    : [{ swatch: boxSwatch(SECOND), text: `fixed tube, ±\u00a0${quantity(fixed, unit, "up")}` }];
 }

@@ -50,13 +50,22 @@ function verdict(summary: PlanSummary): Markup {
 ${
   summary.status !== "whole" || asked.largest === null
     ? null
-    : markup`<p class="asked">${quantity(asked.largest, asked.unit, "up")}<small>largest margin '${asked.name}' along the plan; fixed ${quantity(asked.fixed, asked.unit, "up")}</small></p>`
+    : markup`<p class="asked">${quantity(asked.largest, asked.unit, "up")}<small>largest margin '${asked.name}' along the plan; ${asked.fixed === null ? "no fixed margin" : `fixed ${quantity(asked.fixed, asked.unit, "up")}`}</small></p>`
 }
 <ul class="facts">${factsOf(summary).map((fact) => markup`<li>${fact}</li>`)}</ul>
 </section>`;
 }
 
-function factsOf({ plan, status, evidence, cells, authority, fixedMisfit, motionShare }: PlanSummary): string[] {
+function factsOf({
+  plan,
+  status,
+  evidence,
+  cells,
+  authority,
+  fixedHolds,
+  fixedMisfit,
+  motionShare,
+}: PlanSummary): string[] {
   const given = `Plan: ${plural(plan.samples, "sample")} from ${number(plan.from)} s to ${quantity(plan.until, "s")}.`;
   if (status === "refused") return [given, "There is no number to use."];
   return [
@@ -65,11 +74,13 @@ function factsOf({ plan, status, evidence, cells, authority, fixedMisfit, motion
     ...(authority.largest === null
       ? []
       : [
-          `Tracking may use up to ${share(authority.largest, "up")} of an input's half-range along this plan; the fixed tube reserves ${share(authority.fixed, "up")} everywhere.`,
+          `Tracking may use up to ${share(authority.largest, "up")} of an input's half-range along this plan${authority.fixed === null ? "" : `; the fixed tube reserves ${share(authority.fixed, "up")} everywhere`}.`,
         ]),
-    fixedMisfit === null
-      ? "With the fixed margins this plan would fit as well."
-      : `With the fixed margins this plan would not fit: ${fixedMisfit}.`,
+    !fixedHolds
+      ? "The certificate does not hold all over the envelope: there is no fixed tube to compare with."
+      : fixedMisfit === null
+        ? "With the fixed margins this plan would fit as well."
+        : `With the fixed margins this plan would not fit: ${fixedMisfit}.`,
     `The plan's own jumps against the fitted model push up to ${share(motionShare, "up")} of what the disturbance may; they are in the numbers.`,
   ];
 }

@@ -3,7 +3,8 @@
  * envelope, beside what the logs say there. A logged value is the mean over a window of what the model without this term
  * leaves of the rate (leftover.ts),
  *   y = (1/T) [x_i(t+T) - x_i(t) - integral (f + B u without the term) dt],   for a gain divided by the mean held input,
- * put at the window's mean state. It owes nothing to the network of its own term; a window's spread of states blurs it.
+ * put at the window's mean state. It owes nothing to the network of its own term. A term of several states scatters
+ * around its line, for the others lie up to a quarter of their range beside it: that is no misfit (windowedError.ts is).
  */
 import type { Run } from "../logs/recording.js";
 import type { ResidualFile, ResidualTerm } from "../model/controlAffine.js";

@@ -1,6 +1,6 @@
 import { beforeAll, describe, expect, it } from "vitest";
 import { fittedModel } from "../../src/model/fittedModel.js";
-import { dualMetric } from "../../src/nets/dualMetric.js";
+import { type DualMetricFile, dualMetric } from "../../src/nets/dualMetric.js";
 import { seededRandom } from "../../src/num/random.js";
 import { type PlanCells, planCells } from "../../src/pipeline/planCells.js";
 import type { LocalBounds } from "../../src/tube/planTube.js";
@@ -21,7 +21,20 @@ const plant = handPlant({
     ["1 + 0.5 * x", "1 - 0.5 * x"],
   ],
 });
-const certificate = { plant, residual: null, metric: { kind: "constant", n: 2, W: [1, -0.8, -0.8, 2] } } as const;
+// W about [[1, -0.8], [-0.8, 2]] in the middle, larger to the right: 0.1 I + L L^T, L moved by tanh(x / 2)
+const metric: DualMetricFile = {
+  kind: "network",
+  n: 2,
+  w0: 0.1,
+  features: [{ state: 0, map: "value", center: 0, half: 1 }],
+  mlp: {
+    layers: [
+      { weights: [[0.5]], bias: [0] },
+      { weights: [[0.1], [0], [0.15]], bias: [0.9487, -0.8433, 1.0903] },
+    ],
+  },
+};
+const certificate = { plant, residual: null, metric };
 const wbar = [0.02, 0.03];
 const here = condition(fittedModel(plant, null), dualMetric(certificate.metric));
 /** Largest authority density on a grid of the whole box. */
@@ -109,14 +122,13 @@ describe("proved bounds around a plan", () => {
     const small = cells.local(Float64Array.of(-0.5, 0), Float64Array.of(-0.45, 0.05))!;
     const large = cells.local(Float64Array.of(-0.5, 0), Float64Array.of(0.5, 0.4))!;
     covers(large, small);
-    expect(small.pushes[0]).toBeLessThan(0.75 * large.pushes[0]!);
-    // by hand: G's second column is largest at the left end of the cell
-    const [M11, M12, M22] = [2, 0.8, 1].map((value) => value / 1.36);
-    expect(small.pushes[1]!).toBeGreaterThanOrEqual(0.03 * 1.25 * Math.sqrt(M22!));
-    expect(small.pushes[1]!).toBeLessThan(1.06 * 0.03 * 1.25 * Math.sqrt(M22!));
-    const g = [0.5, 1 - 0.45 / 2];
-    const q = M11! * g[0]! ** 2 + 2 * M12! * g[0]! * g[1]! + M22! * g[1]! ** 2;
-    expect(small.pushes[0]!).toBeGreaterThanOrEqual(0.02 * Math.sqrt(q));
+    expect(small.pushes[0]).toBeLessThan(0.85 * large.pushes[0]!);
+    here.moveTo(Float64Array.of(-0.475, 0.025));
+    for (const [c, bound] of small.pushes.entries()) expect(bound).toBeLessThan(1.1 * here.sigma(alone[c]!));
+    for (const [i, width] of small.widths.entries()) {
+      expect(width).toBeLessThan(1.1 * here.W[i * 3]!);
+      expect(large.widths[i]!).toBeGreaterThan(1.05 * width);
+    }
   });
 
   it("are none beyond the boxes of the proof", () => {

@@ -117,6 +117,7 @@ const job = (planPath: string, over: Partial<Parameters<typeof planTubeJob>[0]> 
     disturbance: { wbar: Float64Array.of(wbar), window },
     planPath,
     law: "fixed",
+    fixedHolds: true,
     ...over,
   });
 
@@ -141,7 +142,7 @@ describe("the tube along a plan of a slide", () => {
     expect(margin).toHaveLength(rows.length - 1);
     for (const name of ["margin.x", "margin.v"])
       expect(Math.max(...column(columns, name))).toBeLessThanOrEqual(
-        summary.margins.find((entry) => `margin.${entry.name}` === name)!.fixed * (1 + 1e-9),
+        summary.margins.find((entry) => `margin.${entry.name}` === name)!.fixed! * (1 + 1e-9),
       );
     // at rest at -0.5 the tube reaches x = -0.5 + margin; cells are 1/8 wide and faces belong to both sides
     for (const [time, at] of [
@@ -262,15 +263,29 @@ describe("the tube along a plan of a slide", () => {
       status[k] = 2;
       claim[k] = 1;
     }
-    const rows = planRows(40, there);
-    const { summary, columns } = await job(planFile("touch.csv", rows), { boxes: { ...boxes, status, claim } });
-    const reaches = rows.find(([, x]) => x! > 0.25)![0]!;
-    expect(summary.status).toBe("ends");
-    expect(summary.end!.kind).toBe("cells");
-    expect(summary.end!.time).toBeGreaterThan(20);
-    expect(summary.end!.time).toBeLessThan(reaches);
-    expect(summary.end!.text).toMatch(/refuted \(claim 'rate'\)/);
-    expect(column(columns, "time").at(-1)!).toBeLessThan(summary.end!.time);
+    const part = { ...boxes, status, claim };
+    const quiet = await job(
+      planFile(
+        "quiet.csv",
+        planRows(10, () => -0.5),
+      ),
+      { boxes: part, fixedHolds: false },
+    );
+    expect(quiet.summary.status).toBe("whole");
+    expect(quiet.summary.text).toMatch(/the certificate fails elsewhere and gives no fixed margin/);
+    expect(quiet.summary.margins.map(({ fixed }) => fixed)).toEqual([null, null]);
+    // at several speeds, so that it ends in the first and in the second half of a row
+    for (const goal of [0.35, 0.4, 0.45, 0.5, 0.6]) {
+      const rows = planRows(40, (time) => (time < 20 ? -0.5 : goal));
+      const { summary, columns } = await job(planFile("touch.csv", rows), { boxes: part });
+      const reaches = rows.find(([, x]) => x! > 0.25)![0]!;
+      expect(summary.status).toBe("ends");
+      expect(summary.end!.kind).toBe("cells");
+      expect(summary.end!.time).toBeGreaterThan(20);
+      expect(summary.end!.time).toBeLessThan(reaches);
+      expect(summary.end!.text).toMatch(/refuted \(claim 'rate'\)/);
+      expect(column(columns, "until").at(-1)!).toBeLessThanOrEqual(summary.end!.time);
+    }
   });
 
   it("says which state or input runs out of room", async () => {

@@ -28,6 +28,7 @@ const summary: PlanSummary = {
   text: "It holds.",
   problems: [],
   end: null,
+  fixedHolds: true,
   fixedMisfit: "speed is 2 m/s at 3 s; the fixed tube leaves 0 to 1 m/s",
   law: "the law of a test",
   rate: 0.5,
@@ -155,8 +156,27 @@ describe("the page of a plan", () => {
     await expect(renderPlanPage({ ...summary, goal: "sideways" }, picture)).rejects.toThrow(/no margin 'sideways'/);
   });
 
+  it("shows nothing of a fixed tube that does not hold", async () => {
+    const without: PlanSummary = {
+      ...summary,
+      fixedHolds: false,
+      fixedMisfit: null,
+      margins: summary.margins.map((margin) => ({ ...margin, fixed: null })),
+      authority: { ...summary.authority, fixed: null },
+      radius: { ...summary.radius, fixed: null },
+    };
+    for (const drawn of [picture, straight]) {
+      const shown = await renderPlanPage(without, { ...drawn, fixedSigma: null });
+      expect(shown).not.toMatch(/fixed tube[,']|NaN|\bnull\b|0\.25 m/);
+      expect(shown).toContain("there is no fixed tube to compare with");
+      expect(all(all(readWellFormed(shown), "table")[0]!, "td").filter((cell) => textOf(cell) === "none")).toHaveLength(
+        5,
+      );
+    }
+  });
+
   it("leaves a gap where a row has no margin", async () => {
-    const gap = await renderPlanPage({ ...summary, goal: "across" }, straight);
+    const gap = await renderPlanPage({ ...summary, goal: "across" }, picture);
     expect(gap).toContain("Margin &#39;across&#39; over time");
     // two pieces: before and after the row without one
     const line = all(

@@ -6,7 +6,13 @@ import { seededRandom } from "../../src/num/random.js";
 import type { Plant } from "../../src/plant/plant.js";
 import { plantScaling } from "../../src/plant/scaling.js";
 import { chooseWindow, WINDOW_GRID } from "../../src/residual/chooseWindow.js";
-import { channelScales, disturbanceBound, runPeaks, type SplitOfRuns } from "../../src/residual/disturbanceBound.js";
+import {
+  channelScales,
+  disturbanceBound,
+  runPeaks,
+  type SplitOfRuns,
+  scoreRun,
+} from "../../src/residual/disturbanceBound.js";
 import { cart, evenTimes, piece, runOf } from "./invented.js";
 
 const SLIP = "  slip: { unit: cm/s, on: { place: 1 } }";
@@ -115,6 +121,66 @@ describe("the disturbance bound", () => {
     const more = bounded({ ...split, test: [...split.test, pushed("short", 9, 9, 0.4)] }, 0.9);
     expect(more.testShareCovered).toBe(full.testShareCovered);
     expect(more.scores.test).toHaveLength(9);
+  });
+});
+
+describe("windows inside the envelope", () => {
+  // the speed's envelope ends at 3 m/s: 0.1 m/s^2 up to there, 5 m/s^2 beyond, then back inside at 0.2 m/s^2
+  const speedAt = (t: number): number => (t < 2 ? 2.75 + 0.1 * t : t < 3 ? 2.95 + 5 * (t - 2) : 0.2 * (t - 3));
+  const excursion = runOf(
+    "out",
+    piece(
+      evenTimes(0.1, 5),
+      (t) => [0, speedAt(t)],
+      () => [0],
+    ),
+  );
+  const pushOnly = cart();
+  const model = fittedModel(pushOnly, null);
+  const scaling = plantScaling(pushOnly);
+
+  it("alone count: a window that holds one sample outside says nothing of the claim", () => {
+    // windows from 0 to 2 s and from 3 s on are inside throughout; the samples at 2.1 to 2.9 s are not
+    expect(runPeaks(model, scaling, excursion, 0.5)![0]).toBeCloseTo(0.2, 9);
+    const inside = runOf("in", { ...excursion.pieces[0]!, time: excursion.pieces[0]!.time.subarray(0, 21) });
+    expect(runPeaks(model, scaling, inside, 0.5)![0]).toBeCloseTo(0.1, 9);
+  });
+  it("are none in a run that is outside throughout: it has no score", () => {
+    const away = runOf(
+      "away",
+      piece(
+        evenTimes(0.1, 3),
+        () => [0, 3.2],
+        () => [0],
+      ),
+    );
+    expect(runPeaks(model, scaling, away, 0.5)).toBeNull();
+    expect(scoreRun(model, scaling, away, { window: 0.5, scale: [1] })).toBeNull();
+  });
+  it("are not asked of states that a declared symmetry leaves out", () => {
+    const far = (of: Plant) =>
+      runPeaks(
+        fittedModel(of, null),
+        plantScaling(of),
+        runOf(
+          "far",
+          piece(
+            evenTimes(0.1, 2),
+            (t) => [1000 + t, 1],
+            () => [0],
+          ),
+        ),
+        0.5,
+      );
+    expect(far(pushOnly)).toBeNull();
+    expect(far(cart({ settings: "symmetry: { translation: [place] }" }))![0]).toBeCloseTo(0, 9);
+  });
+  it("score a run as the bound does", () => {
+    const split = fleet(12, 10);
+    const result = bounded(split, 0.9);
+    for (const [i, run] of split.test.entries()) {
+      expect(scoreRun(fittedModel(plant, null), plantScaling(plant), run, result)).toEqual(result.scores.test[i]);
+    }
   });
 });
 

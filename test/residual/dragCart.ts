@@ -12,7 +12,8 @@ export const dragCart = (steps: number) =>
 export const drag = (speed: number): number => -0.15 * speed * Math.abs(speed);
 export const gain = (speed: number): number => -0.3 + 0.1 * speed;
 
-export function dragRuns(count: number, seed: number, noise: number): Run[] {
+/** drags: how many times the drag. */
+export function dragRuns(count: number, seed: number, noise: number, drags = 1): Run[] {
   return Array.from({ length: count }, (_, i) => {
     const random = seededRandom(seed).stream(`run ${i}`);
     const goal = heldDraws(random, [1, 4], () => -1.2 + 4.4 * random.uniform());
@@ -20,8 +21,8 @@ export function dragRuns(count: number, seed: number, noise: number): Run[] {
     return simulated(
       `run ${i}`,
       {
-        rates: ([, s], [u]) => [s!, u! * (1 + gain(s!)) + drag(s!)],
-        law: (t, [, s]) => [clamped(2 * (goal(t) - s!) - drag(s!) + dither(t), -1, 2)],
+        rates: ([, s], [u]) => [s!, u! * (1 + gain(s!)) + drags * drag(s!)],
+        law: (t, [, s]) => [clamped(2 * (goal(t) - s!) - drags * drag(s!) + dither(t), -1, 2)],
         start: [0, -1 + 4 * random.uniform()],
       },
       evenTimes(0.05, 15),

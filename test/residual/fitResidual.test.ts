@@ -90,6 +90,29 @@ describe("a fit with known truth", () => {
   });
 });
 
+describe("a fit from an earlier residual", () => {
+  it("keeps the hidden layers, takes three tenths of the steps, and follows a few runs of the changed cart", async () => {
+    const plant = dragCart(600);
+    const { residual: before } = await fitResidual(plant, dragRuns(12, 1, 0.002), services(1));
+    const runs = dragRuns(5, 9, 0.002, 2);
+    const { residual: after, history, status } = await fitResidual(plant, runs, services(2), before);
+    expect(status).toBe("improved");
+    expect(history.at(-1)!.step).toBe(180);
+    for (const [j, { mlp, outputScale, features }] of after.terms.entries()) {
+      const earlier = before.terms[j]!;
+      expect({ outputScale, features }).toEqual({ outputScale: earlier.outputScale, features: earlier.features });
+      expect(mlp.layers.slice(0, -1)).toEqual(earlier.mlp.layers.slice(0, -1));
+      expect(mlp.layers.at(-1)).not.toEqual(earlier.mlp.layers.at(-1));
+    }
+    // twice the drag: the earlier terms are far off on fresh runs, the new ones near
+    const fresh = dragRuns(4, 10, 0.002, 2);
+    const [old, now] = [before, after].map(
+      (residual) => windowedError(fittedModel(plant, residual), plantScaling(plant), fresh, 0.5).rates[1]!,
+    ) as [number, number];
+    expect(now).toBeLessThan(0.2 * old);
+  });
+});
+
 describe("a fit that has nothing to give", () => {
   it("is empty where nothing is unknown, and needs no run for that", async () => {
     expect(await fitResidual(cart(), [], services(1))).toEqual({

@@ -143,6 +143,8 @@ describe("checks of a plan", () => {
     expect(problems[1]).toMatchObject({ row: first + 1, time: plan.time[first], value: plan.states[2 * first + 1] });
     expect(problems[2]).toMatchObject({ row: 21, value: 1.5, allowed: [-1, 1] });
     expect(problems[2]!.text).toBe("push is 1.5 at 4 s (row 21); the certificate covers -1 to 1");
+    const low = { ...plan, inputs: plan.inputs.map((value, k) => (k === 3 ? -1.01 : value / 2)) };
+    expect(rangeProblems(plant, low).at(-1)).toMatchObject({ kind: "input", row: 4, value: -1.01 });
     expect(
       rangeProblems(
         plant,

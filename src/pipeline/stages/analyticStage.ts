@@ -26,7 +26,11 @@ export const analyticStage: Stage = {
   reads: [FILES.residual, FILES.disturbance],
   makes: ANALYTIC_KINDS.map(({ file }) => file),
   learns: false,
-  run: async ({ folder, plant, progress, signal }) => {
+  run: async ({ folder, plant, progress, signal, parent }) => {
+    if (parent !== null) {
+      for (const { file } of ANALYTIC_KINDS) folder.writeJson(file, ofEarlierRun(parent.folder.readJson(file)));
+      return "those of the earlier run, certified anew";
+    }
     const notes: string[] = [];
     for (const [done, kind] of ANALYTIC_KINDS.entries()) {
       signal.throwIfAborted();
@@ -43,6 +47,11 @@ export const analyticStage: Stage = {
     return notes.join(", ");
   },
 };
+
+/** A refit compares with the analytic metrics that its user has, certified on the new model and bound. */
+function ofEarlierRun(made: MetricArtifact): MetricArtifact {
+  return made.status === "found" ? { ...made, note: "of the run before the change" } : made;
+}
 
 interface Bounds {
   readonly wbar: Float64Array;

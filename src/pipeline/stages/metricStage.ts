@@ -8,6 +8,7 @@ import { learnMetric } from "../../metric/learnMetric.js";
 import type { ControlAffineModel, ResidualFile } from "../../model/controlAffine.js";
 import { featuresOf } from "../../nets/features.js";
 import { seededRandom } from "../../num/random.js";
+import type { PlantSettings } from "../../plant/plant.js";
 import { inputCorners } from "../../verify/corners.js";
 import { type LeafTable, leavesOf } from "../../verify/proof/leafTable.js";
 import { FILES, type MetricArtifact, readBounds, readModel } from "../artifacts.js";
@@ -19,6 +20,7 @@ import type { Stage } from "../stage.js";
 /** Analytic metrics of the fitted model to start from, the first that there is. */
 const STARTS = ["metric-constant.json", "metric-riccati.json"];
 const HARD_STATES = 30;
+const WARM_SHARE = 0.25;
 /** Boxes that a proof may examine while the metric is still being learned. */
 const PROOF_BOXES = 40_000;
 /** 1/s: where training starts when no analytic metric gives a rate. */
@@ -30,10 +32,13 @@ export const metricStage: Stage = {
   reads: [FILES.residual, FILES.disturbance, ...STARTS],
   makes: [FILES.learned, FILES.learning],
   learns: true,
-  run: async ({ folder, plant, seed, engine, progress, signal, workers }) => {
+  run: async ({ folder, plant, seed, engine, progress, signal, workers, parent }) => {
     const model = readModel(folder, plant, "fitted");
     const question = tubeQuestion(plant, readBounds(folder, "fitted"));
-    const start = STARTS.map((file) => folder.readJson<MetricArtifact>(file)).find(({ status }) => status === "found");
+    const earlier = parent === null ? [] : [parent.folder.readJson<MetricArtifact>(FILES.learned)];
+    const start = [...earlier, ...STARTS.map((file) => folder.readJson<MetricArtifact>(file))].find(
+      ({ status }) => status === "found",
+    );
     if (start === undefined || start.status !== "found") {
       const reason = "no analytic metric was found to start from";
       folder.writeJson(FILES.learned, { status: "absent", reason } satisfies MetricArtifact);
@@ -41,6 +46,7 @@ export const metricStage: Stage = {
       return reason;
     }
     const residual = folder.readJson<ResidualFile>(FILES.residual);
+    const { metricNet } = plant.settings;
     const report = (done: number, total: number, note: string): void => progress("metric", done, total, note);
     const first = judgeMetric(model, start.metric, question);
     const learned = await learnMetric(
@@ -52,7 +58,7 @@ export const metricStage: Stage = {
         activeStates: model.active,
         goalVector: goalVector(question.goal, model.n, model.rotation),
         features: featuresOf(plant, plant.settings.metricDependsOn),
-        ...plant.settings.metricNet,
+        ...(parent === null ? metricNet : warm(metricNet)),
         initialRate: first.rate ?? FIRST_RATE,
         start: start.metric,
       },
@@ -78,6 +84,11 @@ export const metricStage: Stage = {
     return `best of ${learned.rounds} rounds: ${learned.bestRound}`;
   },
 };
+
+/** From a metric of an earlier run a share of the steps is enough. */
+function warm({ width, steps, rounds }: PlantSettings["metricNet"]): PlantSettings["metricNet"] {
+  return { width, steps: Math.ceil(WARM_SHARE * steps), rounds: Math.ceil(WARM_SHARE * rounds) };
+}
 
 /** States of the boxes that stop the proof of a metric's tube; null when it closes, empty when there is no tube. */
 async function openStates(

@@ -1,4 +1,5 @@
-/** The missing dynamics: fit on the fit runs, errors on the test runs. */
+/** The missing dynamics: fit on the fit runs, errors on the test runs, or on the calibration runs where there are none. */
+import type { ResidualFile } from "../../model/controlAffine.js";
 import { fittedModel } from "../../model/fittedModel.js";
 import { seededRandom } from "../../num/random.js";
 import { perSecond } from "../../plant/perSecond.js";
@@ -18,17 +19,20 @@ export const residualStage: Stage = {
   reads: [FILES.samples],
   makes: [FILES.residual, FILES.fit],
   learns: true,
-  run: async ({ folder, plant, seed, engine, progress, signal }) => {
+  run: async ({ folder, plant, seed, engine, progress, signal, parent }) => {
     const split = readSplit(folder, plant);
-    const fitted = await fitResidual(plant, split.fit, {
+    const services = {
       engine: await engine(),
       random: seededRandom(seed).stream("residual"),
-      progress: (done, total, note) => progress("residual", done, total, note),
+      progress: (done: number, total: number, note: string) => progress("residual", done, total, note),
       signal,
-    });
+    };
+    const earlier = parent?.folder.readJson<ResidualFile>(FILES.residual) ?? null;
+    const fitted = await fitResidual(plant, split.fit, services, earlier);
+    const heldOut = split.test.length > 0 ? split.test : split.calibration;
     const scaling = plantScaling(plant);
     const errors = [null, fitted.residual].map((residual) =>
-      windowedError(fittedModel(plant, residual), scaling, split.test, ERROR_WINDOW),
+      windowedError(fittedModel(plant, residual), scaling, heldOut, ERROR_WINDOW),
     );
     const unknown = [...new Set(plant.unknowns.map((term) => term.state))].sort((a, b) => a - b);
     const saved: FitFile = {
