@@ -1,12 +1,12 @@
 /**
  * The learning objective over a batch and its gradient in W and its tangents:
  *
- *   log margin = log Omega(lambda) + log max sigma + 1/2 log max c^T W c,   Omega = T / (1 - e^{-lambda T})  (T = 0: 1/lambda)
+ *   log margin = log Omega(lambda) + log sigma + 1/2 log max c^T W c,   Omega = T / (1 - e^{-lambda T})  (T = 0: 1/lambda)
  *   + kappa (max + mean) of max(0, excess(lambda, rho(x)) / 2 + slack lambda) / lambda_ref
  *
  *   + kappa (max + mean) of max(0, log(R max_i sqrt(W_ii) / room) + slack)         i over the active states
  *
- * rho(x) = 2 limit / (R sqrt(eigmax B^T W^-1 B)), R = Omega max sigma, is the largest gain that the authority limit
+ * rho(x) = 2 limit / (R sqrt(eigmax B^T W^-1 B)), R = Omega sigma, sigma = sum_c max push_c, is the largest gain that the authority limit
  * allows at x: one condition holds rate and authority at once, and it is finite everywhere. The gradient of a maximum
  * over states is that of their power mean of high order, so that every near-worst state pulls.
  */
@@ -56,7 +56,9 @@ export function batchObjective(
 ): BatchValue {
   const { wbar, window, authorityLimit, referenceRate, goalVector } = settings;
   const count = members.length;
-  const sigmas = new Float64Array(count);
+  const channels = wbar.length;
+  const pushes = Array.from({ length: channels }, () => new Float64Array(count));
+  const push = new Float64Array(channels);
   const spreads = new Float64Array(count);
   const gains = new Float64Array(count);
   const goals: Float64Array[] = [];
@@ -65,14 +67,18 @@ export function batchObjective(
     const c = goalVector(member.W);
     goals.push(c);
     spreads[i] = quadratic(member.W, c);
-    sigmas[i] = terms.sigma(wbar);
+    terms.pushes(wbar, push);
+    pushes.forEach((of, c) => {
+      of[i] = push[c]!;
+    });
     gains[i] = terms.inputGain();
   });
-  const sigma = softMaximum(sigmas);
+  const hardest = pushes.map(softMaximum);
+  const sigma = hardest.reduce((sum, { value }) => sum + value, 0);
   const spread = softMaximum(spreads);
   const omega = window === 0 ? 1 / lambda : -window / Math.expm1(-lambda * window);
   const omegaSlope = window === 0 ? -1 : (lambda * window * Math.exp(-lambda * window)) / Math.expm1(-lambda * window);
-  const radius = omega * sigma.value;
+  const radius = omega * sigma;
 
   const hinges = new Float64Array(count);
   let worstExcess = Number.NEGATIVE_INFINITY;
@@ -118,9 +124,12 @@ export function batchObjective(
   });
   rateSlope += onLogRadius * omegaSlope;
   members.forEach((member, i) => {
-    if (sigma.weights[i]! > 1e-6) {
+    if (hardest.some(({ weights }) => weights[i]! > 1e-6)) {
       member.load();
-      terms.addSigmaGradient((onLogRadius * sigma.weights[i]!) / sigmas[i]!, wbar, member.adjoint);
+      hardest.forEach(({ weights }, c) => {
+        push[c] = (onLogRadius * weights[i]!) / sigma;
+      });
+      terms.addPushGradient(push, wbar, member.adjoint);
     }
     addOuter(member.adjoint.W, goals[i]!, (0.5 * spread.weights[i]!) / spreads[i]!);
   });

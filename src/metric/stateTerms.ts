@@ -28,8 +28,10 @@ export interface StateTerms {
   excess(lambda: number, rho: number): number;
   /** adjoint += weight * d excess; returns d excess / d lambda and d excess / d rho; after excess(). */
   addExcessGradient(weight: number, adjoint: MetricAdjoint): { readonly lambda: number; readonly rho: number };
-  sigma(wbar: Float64Array): number;
-  addSigmaGradient(weight: number, wbar: Float64Array, adjoint: MetricAdjoint): void;
+  /** wbar_c sqrt(g_c^T W^{-1} g_c) of each leftover channel into out (p). */
+  pushes(wbar: Float64Array, out: Float64Array): void;
+  /** adjoint += sum_c weights_c * d push_c. */
+  addPushGradient(weights: Float64Array, wbar: Float64Array, adjoint: MetricAdjoint): void;
   /** eigmax(B^T W^{-1} B). */
   inputGain(): number;
   /** adjoint += weight * d inputGain; after inputGain(). */
@@ -178,28 +180,26 @@ export function stateTerms(
 
   const q = new Float64Array(n);
   const g = new Float64Array(n);
-  const forEachChannel = (wbar: Float64Array, visit: (norm: number, wbar: number) => void): void => {
+  const forEachChannel = (wbar: Float64Array, visit: (norm: number, wbar: number, channel: number) => void): void => {
     for (let c = 0; c < wbar.length; c++) {
       column(state.point.G, wbar.length, c, g);
       q.set(g);
       applyInverse(q);
       let square = 0;
       for (let i = 0; i < n; i++) square += g[i]! * q[i]!;
-      visit(Math.sqrt(square), wbar[c]!);
+      visit(Math.sqrt(square), wbar[c]!, c);
     }
   };
 
-  const sigma = (wbar: Float64Array): number => {
-    let sum = 0;
-    forEachChannel(wbar, (norm, bound) => {
-      sum += bound * norm;
+  const pushes: StateTerms["pushes"] = (wbar, out) => {
+    forEachChannel(wbar, (norm, bound, channel) => {
+      out[channel] = bound * norm;
     });
-    return sum;
   };
 
-  const addSigmaGradient: StateTerms["addSigmaGradient"] = (weight, wbar, adjoint) => {
-    forEachChannel(wbar, (norm, bound) => {
-      if (norm > 0) addOuter(q, (-weight * bound) / (2 * norm), adjoint);
+  const addPushGradient: StateTerms["addPushGradient"] = (weights, wbar, adjoint) => {
+    forEachChannel(wbar, (norm, bound, channel) => {
+      if (norm > 0) addOuter(q, (-weights[channel]! * bound) / (2 * norm), adjoint);
     });
   };
 
@@ -232,8 +232,8 @@ export function stateTerms(
     load,
     excess,
     addExcessGradient,
-    sigma,
-    addSigmaGradient,
+    pushes,
+    addPushGradient,
     inputGain,
     addInputGainGradient: (weight, adjoint) => addOuter(gainVector, -weight, adjoint),
     conditionMatrix: (corner, lambda) => {

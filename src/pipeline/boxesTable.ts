@@ -2,12 +2,15 @@
 import type { SavedColumn } from "../logs/savedTable.js";
 import type { Plant } from "../plant/plant.js";
 import { activeStates } from "../plant/scaling.js";
+import type { ListedClaims } from "../verify/proof/claims.js";
 import type { LeafTable } from "../verify/proof/leafTable.js";
 
 export function boxesColumns(plant: Plant, table: LeafTable): SavedColumn[] {
   const names = activeStates(plant).map((state) => plant.states[state]!.name);
   const { count, dimension } = table;
-  const spreads = count === 0 ? 0 : table.spreads.length / count;
+  const [pushes, spreads] = [table.pushes, table.spreads].map((values) =>
+    count === 0 ? 0 : values.length / count,
+  ) as [number, number];
   const strided = (values: Float64Array, stride: number, at: number): Float64Array =>
     Float64Array.from({ length: count }, (_, i) => values[i * stride + at]!);
   return [
@@ -18,11 +21,15 @@ export function boxesColumns(plant: Plant, table: LeafTable): SavedColumn[] {
     { name: "status", unit: "0 open, 1 proved, 2 refuted", values: Float64Array.from(table.status) },
     {
       name: "claim",
-      unit: "0 none, 1 rate, 2 sigma, 3 spread, 4 authority, 5 definite",
+      unit: "0 none, 1 rate, 2 push, 3 spread, 4 authority, 5 definite",
       values: Float64Array.from(table.claim),
     },
     { name: "rate", unit: "1/s", values: table.rate },
-    { name: "sigma", unit: "1/s", values: table.sigma },
+    ...Array.from({ length: pushes }, (_, c) => ({
+      name: `push ${c}`,
+      unit: "1/s",
+      values: strided(table.pushes, pushes, c),
+    })),
     ...Array.from({ length: spreads }, (_, s) => ({
       name: `spread ${s}`,
       unit: "scaled",
@@ -32,11 +39,11 @@ export function boxesColumns(plant: Plant, table: LeafTable): SavedColumn[] {
   ];
 }
 
-/** The inverse; spreads: number of spread claims. Throws when a column is missing or has a length of its own. */
+/** The inverse, for the table of these claims. Throws when a column is missing or has a length of its own. */
 export function boxesFromColumns(
   plant: Plant,
   columns: ReadonlyMap<string, Float64Array | readonly string[]>,
-  spreads: number,
+  claims: ListedClaims,
 ): LeafTable {
   const names = activeStates(plant).map((state) => plant.states[state]!.name);
   const numbers = (name: string): Float64Array => {
@@ -63,8 +70,8 @@ export function boxesFromColumns(
     status: Uint8Array.from(numbers("status")),
     claim: Uint8Array.from(numbers("claim")),
     rate,
-    sigma: numbers("sigma"),
-    spreads: interleaved(Array.from({ length: spreads }, (_, s) => numbers(`spread ${s}`))),
+    pushes: interleaved(claims.pushes.map((_, c) => numbers(`push ${c}`))),
+    spreads: interleaved(claims.spreads.map((_, s) => numbers(`spread ${s}`))),
     authority: numbers("authority"),
   };
 }

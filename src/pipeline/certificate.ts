@@ -101,7 +101,7 @@ export function certificateFile(name: string, note: string, certificate: Certifi
 
 function proofFile(proof: ProofResult): ProofFile {
   const { status, provedRate, provedShare, refutedShare, openShare, boxes, leaves, refuted, claims } = proof;
-  const names = ["rate", "sigma", "spread", "authority", "definite"];
+  const names = ["rate", "push", "spread", "authority", "definite"];
   const counts = names.map((name, i) => ({ name, count: leaves.claim.filter((claim) => claim === i + 1).length }));
   return {
     status,

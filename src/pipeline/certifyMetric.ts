@@ -9,6 +9,7 @@ import type { MarginGoal, Plant } from "../plant/plant.js";
 import { type CertificateExtremes, chooseRate, type RateChoice, type TradeOffPoint } from "../tube/chooseRate.js";
 import { tubeRadius } from "../tube/tube.js";
 import { type CountedEvidence, countFailures } from "../verify/counted.js";
+import { aloneIn } from "../verify/proof/claims.js";
 import { type MarginDirection, spread } from "../verify/spread.js";
 import { type Survey, survey } from "../verify/survey.js";
 
@@ -43,6 +44,8 @@ export interface Certification {
 export interface CertifiedTube {
   readonly rate: number;
   readonly radius: number;
+  /** Claimed sup of wbar_i sqrt(g_i^T W^{-1} g_i), one a leftover channel, 1/s; sigma is their sum. */
+  readonly pushes: readonly number[];
   readonly sigma: number;
   readonly authority: number;
   readonly authorityDensity: number;
@@ -76,6 +79,7 @@ export function certifyMetric(
 }
 
 interface SampledExtremes extends CertificateExtremes {
+  readonly pushes: readonly number[];
   readonly spread: (direction: MarginDirection) => number;
 }
 
@@ -94,9 +98,12 @@ export function sampledExtremes(
     known.set(key, value);
     return value;
   };
+  // within a window of the bound each channel may be worst at a state of its own
+  const pushes = aloneIn(Array.from(wbar)).map((alone) => worse(seen.sigma(Float64Array.from(alone)).value));
   return {
     usableRate: seen.worst.rate - allowance * Math.abs(seen.worst.rate),
-    sigma: worse(seen.sigma(wbar).value),
+    pushes,
+    sigma: sumOf(pushes),
     authorityDensity: (rate) => worse(seen.authorityDensity(rate).value),
     goalSpread: (radius) => spreadOf(goalDirection(goal, headingErrorOf(model, radius, spreadOf))),
     widestSpread: model.active.reduce((most, state) => Math.max(most, spreadOf({ kind: "state", state })), 0),
@@ -127,7 +134,7 @@ function tubeAt(
   point: TradeOffPoint,
   { window, initialDistance }: TubeQuestion,
 ): CertifiedTube {
-  const { sigma, usableRate } = extremes;
+  const { pushes, sigma, usableRate } = extremes;
   const radius = tubeRadius({ window, sigma }, point.rate, initialDistance);
   const headingError = headingErrorOf(model, radius, extremes.spread);
   const states: MarginDirection[] = Array.from({ length: model.n }, (_, state) => ({ kind: "state", state }));
@@ -140,6 +147,7 @@ function tubeAt(
     rate: point.rate,
     claimedRate: Number.isFinite(usableRate) ? usableRate : point.rate,
     radius,
+    pushes,
     sigma,
     authority: (radius * authorityDensity) / 2,
     authorityDensity,
@@ -156,11 +164,16 @@ function countClaims(
   { wbar }: TubeQuestion,
   random: Random,
 ): CountedEvidence {
+  const alone = aloneIn(Array.from(wbar)).map((bounds) => Float64Array.from(bounds));
   const fails = (at: Float64Array): boolean =>
     !condition.moveTo(at) ||
     condition.rate().rate < tube.claimedRate ||
-    condition.sigma(wbar) > tube.sigma ||
+    alone.some((bounds, c) => condition.sigma(bounds) > tube.pushes[c]!) ||
     condition.authorityDensity(tube.rate) > tube.authorityDensity ||
     tube.spreads.some(({ direction, value }) => spread(condition.W, model.n, model.rotation, direction) > value);
   return countFailures(fails, model.active.length, COUNTED_POINTS, COUNTED_CONFIDENCE, random);
+}
+
+export function sumOf(values: readonly number[]): number {
+  return values.reduce((sum, value) => sum + value, 0);
 }

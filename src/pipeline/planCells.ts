@@ -6,7 +6,6 @@
 
 import type { LocalBounds } from "../tube/planTube.js";
 import { cellProver } from "../verify/proof/cellProver.js";
-import { channelPush } from "../verify/proof/channelPush.js";
 import type { ProofClaims } from "../verify/proof/claims.js";
 import { leafSearch } from "../verify/proof/leafSearch.js";
 import type { Leaf, LeafTable } from "../verify/proof/leafTable.js";
@@ -43,14 +42,12 @@ export function planCells(
   boxes: LeafTable,
   active: readonly number[],
 ): PlanCells {
-  const count = claims.spreads.length;
-  const search = leafSearch(boxes, count);
+  const search = leafSearch(boxes, claims);
   const widthAt = active.map((state) =>
     claims.spreads.findIndex(({ direction }) => direction.kind === "state" && direction.state === state),
   );
   const prover = cellProver(subject, claims);
-  const push = channelPush(subject, claims.sigma?.wbar ?? []);
-  const longestEdge = Math.max(FINEST_EDGE, 2 ** (1 - Math.floor(CELL_HALVINGS / Math.max(1, push.used.length))));
+  const longestEdge = Math.max(FINEST_EDGE, 2 ** (1 - Math.floor(CELL_HALVINGS / Math.max(1, prover.used.length))));
   const roots = new Map<Leaf, Cell>();
   const used = new Set<Cell>();
 
@@ -59,13 +56,10 @@ export function planCells(
     const own = result === null ? fallback : result.status === "proved" ? result.bounds : null;
     // a part that is not shown by itself keeps what is shown of the whole
     if (own === null) return cell.parent!;
-    const pushes = push
-      .on(cell.lower, cell.upper)
-      .map((shown, c) => Math.min(shown, own.sigma, cell.parent?.pushes[c] ?? Number.POSITIVE_INFINITY));
     const { parent } = cell;
     return {
       rate: Math.max(own.rate, parent?.rate ?? Number.NEGATIVE_INFINITY),
-      pushes,
+      pushes: own.pushes.map((value, c) => Math.min(value, parent?.pushes[c] ?? Number.POSITIVE_INFINITY)),
       widths: widthAt.map((s, i) => Math.min(own.spreads[s]!, parent?.widths[i] ?? Number.POSITIVE_INFINITY)),
       spreads: own.spreads.map((value, s) => Math.min(value, parent?.spreads[s] ?? Number.POSITIVE_INFINITY)),
       authority: Math.min(own.authority, parent?.authority ?? Number.POSITIVE_INFINITY),
@@ -76,7 +70,7 @@ export function planCells(
     if (cell.parts !== null) return cell.parts;
     let axis = -1;
     let longest = longestEdge;
-    for (const i of push.used) {
+    for (const i of prover.used) {
       const edge = cell.upper[i]! - cell.lower[i]!;
       if (edge <= longest) continue;
       longest = edge;
@@ -118,7 +112,7 @@ export function planCells(
         ?.map((cell) => cell.bounds!)
         .reduce(worse) ?? null,
     localAt: (rate, most) => {
-      const atRate = cellProver(subject, { rate: claims.rate, sigma: null, spreads: [], authority: { rate, most } });
+      const atRate = cellProver(subject, { rate: claims.rate, pushes: [], spreads: [], authority: { rate, most } });
       const authorities = new Map<Cell, number>();
       const authorityOf = (cell: Cell): number => {
         const known = authorities.get(cell);

@@ -2,7 +2,7 @@
 import type { ResidualFile } from "../model/controlAffine.js";
 import type { DualMetricFile } from "../nets/dualMetric.js";
 import type { Plant } from "../plant/plant.js";
-import type { ProofClaims, ProofSubject } from "../verify/proof/claims.js";
+import { aloneIn, type ProofClaims, type ProofSubject } from "../verify/proof/claims.js";
 import { proofWorkers } from "../verify/proof/proofWorkers.js";
 import { type ProofResult, prove } from "../verify/proof/prove.js";
 import type { CertifiedTube } from "./certifyMetric.js";
@@ -27,7 +27,7 @@ const MOST_BOXES = 120_000;
 export function tubeClaims(tube: CertifiedTube, wbar: readonly number[]): ProofClaims {
   return {
     rate: tube.claimedRate,
-    sigma: { wbar, most: tube.sigma },
+    pushes: aloneIn(wbar).map((alone, c) => ({ wbar: alone, most: tube.pushes[c]! })),
     spreads: tube.spreads.map(({ direction, value }) => ({ direction, most: value })),
     authority: { rate: tube.rate, most: tube.authorityDensity },
   };

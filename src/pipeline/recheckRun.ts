@@ -8,12 +8,13 @@ import type { ResidualFile } from "../model/controlAffine.js";
 import type { Plant } from "../plant/plant.js";
 import type { Summary } from "../report/artifacts.js";
 import { tubeRadius } from "../tube/tube.js";
+import type { ListedClaims } from "../verify/proof/claims.js";
 import type { LeafTable } from "../verify/proof/leafTable.js";
 import { recheck } from "../verify/proof/recheck.js";
 import { FILES, type MetricArtifact, readBounds } from "./artifacts.js";
 import { boxesFromColumns } from "./boxesTable.js";
 import type { CertificateFile } from "./certificate.js";
-import type { CertifiedTube } from "./certifyMetric.js";
+import { type CertifiedTube, sumOf } from "./certifyMetric.js";
 import { tubeClaims } from "./proveTube.js";
 import { type RunFolder, RunFolderError } from "./runFolder.js";
 import { marginsOf } from "./summaryOf.js";
@@ -39,7 +40,7 @@ export function recheckRun(
   const { wbar, window } = readBounds(folder, "fitted");
   const claims = tubeClaims(tube, Array.from(wbar));
   const faults = tubeFaults(folder, plant, tube, window);
-  const boxes = readBoxes(folder, plant, claims.spreads.length);
+  const boxes = readBoxes(folder, plant, claims);
   if (typeof boxes === "string") return { holds: false, boxes: 0, faults: [...faults, boxes] };
   const subject = { plant, residual: folder.readJson<ResidualFile>(FILES.residual), metric: made.metric };
   const again = recheck(subject, claims, boxes, progress);
@@ -47,9 +48,9 @@ export function recheckRun(
   return { holds: all.length === 0, boxes: again.boxes, faults: all };
 }
 
-function readBoxes(folder: RunFolder, plant: Plant, spreads: number): LeafTable | string {
+function readBoxes(folder: RunFolder, plant: Plant, claims: ListedClaims): LeafTable | string {
   try {
-    return boxesFromColumns(plant, readSavedTable(folder.file(FILES.boxes)), spreads);
+    return boxesFromColumns(plant, readSavedTable(folder.file(FILES.boxes)), claims);
   } catch (error) {
     return (error as Error).message;
   }
@@ -64,6 +65,7 @@ function tubeFaults(folder: RunFolder, plant: Plant, tube: CertifiedTube, window
     }
   };
   const radius = tubeRadius({ window, sigma: tube.sigma }, tube.rate, plant.settings.initialDistance);
+  expect("the tube's sigma", tube.sigma, sumOf(tube.pushes));
   expect("the tube's radius", tube.radius, radius);
   expect("the tube's authority", tube.authority, (radius * tube.authorityDensity) / 2);
   if (!(tube.rate < tube.claimedRate)) faults.push("the tube's rate is not below the claimed rate");

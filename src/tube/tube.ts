@@ -4,14 +4,18 @@
  * window's push at its end:
  *   R(t)  = e^{-lambda t} R0 + T sigma (1 - e^{-lambda T ceil(t/T)}) / (1 - e^{-lambda T})
  *   R_inf = T sigma / (1 - e^{-lambda T})          (-> sigma / lambda as T -> 0)
- * Margins use max(R0, R_inf): margin of c^T x = R sqrt(sup c^T W c); authority = 1/2 R sup density, in shares of the
+ * R jumps at the windows' ends and is monotone over them, so its supremum is max(R0 + T sigma, R_inf), at the first or in
+ * the long run. Margins use it: margin of c^T x = R sqrt(sup c^T W c); authority = 1/2 R sup density, in shares of the
  * inputs' half-range. Scaled states are unitless, so R is too. Source: Gronwall's comparison on the Riemannian distance
  * (Manchester and Slotine, IEEE TAC 62(5), 2017, section III), summed over windows.
  */
 export interface TubeDisturbance {
   /** Window length T, s; 0 for a bound that holds at every instant. */
   readonly window: number;
-  /** sup_x sum_i wbar_i sqrt(g_i^T M g_i), 1/s. */
+  /**
+   * sum_i wbar_i sup_x sqrt(g_i^T M g_i), 1/s. With windows the supremum of the sum is not enough: each channel may spend
+   * its window where it pushes most.
+   */
   readonly sigma: number;
 }
 
@@ -28,5 +32,6 @@ export function radiusAt(time: number, disturbance: TubeDisturbance, rate: numbe
 
 /** The radius that margins use. */
 export function tubeRadius(disturbance: TubeDisturbance, rate: number, initialDistance: number): number {
-  return Math.max(initialDistance, steadyRadius(disturbance, rate));
+  const first = initialDistance + disturbance.window * disturbance.sigma;
+  return Math.max(first, steadyRadius(disturbance, rate));
 }

@@ -36,7 +36,9 @@ describe("learner and verifier: two implementations, one truth", () => {
           const size = Math.sqrt(theirs.reduce((s, x) => s + x * x, 0));
           expect(Math.max(...ours.map((x, i) => Math.abs(x - theirs[i]!)))).toBeLessThan(1e-9 * size);
         }
-        expect(terms.sigma(wbar)).toBeCloseTo(there.sigma(wbar), 9);
+        const push = new Float64Array(wbar.length);
+        terms.pushes(wbar, push);
+        expect(push.reduce((a, b) => a + b)).toBeCloseTo(there.sigma(wbar), 9);
         // with the gain that the verifier calls the least, the learner's excess is zero; without gain it is the rate
         const rate = there.rate().rate;
         const rho = there.authorityDensity(rate - 0.4) / Math.sqrt(terms.inputGain());

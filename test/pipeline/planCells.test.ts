@@ -5,8 +5,7 @@ import { seededRandom } from "../../src/num/random.js";
 import { type PlanCells, planCells } from "../../src/pipeline/planCells.js";
 import type { LocalBounds } from "../../src/tube/planTube.js";
 import { condition } from "../../src/verify/condition.js";
-import { channelPush } from "../../src/verify/proof/channelPush.js";
-import type { ProofClaims } from "../../src/verify/proof/claims.js";
+import { aloneIn, type ProofClaims } from "../../src/verify/proof/claims.js";
 import { prove } from "../../src/verify/proof/prove.js";
 import { handPlant } from "../verify/proofPlants.js";
 
@@ -50,7 +49,7 @@ function densest(rate: number): number {
 }
 const claims: ProofClaims = {
   rate: 0.4,
-  sigma: { wbar, most: 1 },
+  pushes: aloneIn(wbar).map((alone) => ({ wbar: alone, most: 1 })),
   spreads: [0, 1].map((state) => ({ direction: { kind: "state", state }, most: 3 })),
   authority: { rate: 0.3, most: 1.05 * densest(0.3) },
 };
@@ -134,21 +133,5 @@ describe("proved bounds around a plan", () => {
   it("are none beyond the boxes of the proof", () => {
     expect(cells.local(Float64Array.of(1.5, 0), Float64Array.of(1.6, 0.1))).toBeNull();
     expect(cells.unproved(Float64Array.of(0, 0), Float64Array.of(0.1, 0.1))).toBeNull();
-  });
-});
-
-describe("push of one channel", () => {
-  it("is a tight upper bound on a small cell, and together no less than the joint push", () => {
-    const pushes = channelPush(certificate, wbar);
-    expect(pushes.used).toEqual([0, 1]);
-    const [lower, upper] = [Float64Array.of(0.2, -0.1), Float64Array.of(0.21, -0.09)];
-    const bounds = pushes.on(lower, upper);
-    here.moveTo(Float64Array.of(0.205, -0.095));
-    for (const [c, bound] of bounds.entries()) {
-      const value = here.sigma(alone[c]!);
-      expect(bound).toBeGreaterThan(value);
-      expect(bound).toBeLessThan(1.01 * value);
-    }
-    expect(bounds[0]! + bounds[1]!).toBeGreaterThan(here.sigma(Float64Array.from(wbar)));
   });
 });

@@ -12,6 +12,7 @@ const W = [0.04, 0.09, 0.01, 0.25, 0.09, 0.04, 0.09];
 const tube: CertifiedTube = {
   rate: 0.5,
   radius: 0.1,
+  pushes: [0.03, 0.02],
   sigma: 0.05,
   authority: 0.3,
   authorityDensity: 6,

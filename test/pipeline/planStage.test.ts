@@ -45,6 +45,7 @@ const authorityDensity = 1.05 * here.authorityDensity(rate);
 const tube: CertifiedTube = {
   rate,
   radius,
+  pushes: [sigma],
   sigma,
   authority: (radius * authorityDensity) / 2,
   authorityDensity,

@@ -45,14 +45,16 @@ describe("bounds of proved cells at random points", () => {
       const claims = sampledClaims(seen, { wbar, directions, tubeRate, gap: 0.01 });
       const result = await prove({ plant, residual, metric }, claims);
       expect(result.status).toBe("proved");
-      const search = leafSearch(result.leaves, directions.length);
+      const search = leafSearch(result.leaves, claims);
       const random = seededRandom(77);
       for (let i = 0; i < POINTS; i++) {
         const at = Float64Array.from(model.active, () => 2 * random.uniform() - 1);
         const bounds = search.worst(at, at)!;
         here.moveTo(at);
         expect(here.rate().rate).toBeGreaterThanOrEqual(bounds.rate - 1e-10);
-        expect(here.sigma(Float64Array.from(wbar))).toBeLessThanOrEqual(bounds.sigma * (1 + 1e-10));
+        claims.pushes.forEach((push, c) => {
+          expect(here.sigma(Float64Array.from(push.wbar))).toBeLessThanOrEqual(bounds.pushes[c]! * (1 + 1e-10));
+        });
         expect(here.authorityDensity(tubeRate)).toBeLessThanOrEqual(bounds.authority * (1 + 1e-8));
         directions.forEach((direction, s) => {
           expect(spread(here.W, model.n, model.rotation, direction)).toBeLessThanOrEqual(

@@ -27,6 +27,15 @@ describe("tube", () => {
   it("uses the larger of the start and the steady radius", () => {
     expect(tubeRadius({ window: 0, sigma: 0.1 }, 1, 0.4)).toBe(0.4);
     expect(tubeRadius({ window: 0, sigma: 0.1 }, 1, 0)).toBe(0.1);
+    // the supremum over all times, from any start
+    for (const start of [0, 0.02, 0.05, 0.2]) {
+      const disturbance = { window: 0.5, sigma: 0.2 };
+      let most = start;
+      for (let t = 1e-9; t < 30; t += 0.01) most = Math.max(most, radiusAt(t, disturbance, 0.9, start));
+      const radius = tubeRadius(disturbance, 0.9, start);
+      expect(radius).toBeGreaterThanOrEqual(most * (1 - 1e-12));
+      expect(radius).toBeLessThan(most * (1 + 1e-8));
+    }
   });
 
   // The trade's scaling rule, common practice: a tube is proportional to the disturbance and, unhurried, to 1/lambda.

@@ -9,7 +9,7 @@ import { type BatchExaminer, prove } from "../../src/verify/proof/prove.js";
 import { recheck } from "../../src/verify/proof/recheck.js";
 import { constantFile, formulaMetric, handPlant, threeState } from "./proofPlants.js";
 
-const only = (rate: number): ProofClaims => ({ rate, sigma: null, spreads: [], authority: null });
+const only = (rate: number): ProofClaims => ({ rate, pushes: [], spreads: [], authority: null });
 
 describe("linear plants", () => {
   // With constant A, B and W the rate is -1/2 eigmax(N^T (AW + WA^T) N, N^T W N), N a basis of null(B^T).
@@ -76,7 +76,7 @@ describe("linear plants", () => {
     const exact = { sigma: 0.3 * Math.sqrt(m22), authority: rho * Math.sqrt(m22) };
     const claims = (factor: number): ProofClaims => ({
       rate: a - 1e-6,
-      sigma: { wbar: [0.3], most: exact.sigma * factor },
+      pushes: [{ wbar: [0.3], most: exact.sigma * factor }],
       spreads: [
         { direction: { kind: "state", state: 0 }, most: factor },
         { direction: { kind: "state", state: 1 }, most: b * factor },
@@ -85,15 +85,15 @@ describe("linear plants", () => {
     });
     const held = await prove({ plant, residual: null, metric }, claims(1 + 1e-6));
     expect(held.status).toBe("proved");
-    expect(held.worst.sigma / exact.sigma).toBeCloseTo(1, 5);
+    expect(held.worst.pushes[0]! / exact.sigma).toBeCloseTo(1, 5);
     expect(held.worst.authority / exact.authority).toBeCloseTo(1, 5);
     expect(held.worst.spreads[1]! / b).toBeCloseTo(1, 9);
-    for (const short of ["sigma", "authority", "spread"] as const) {
+    for (const short of ["push", "authority", "spread"] as const) {
       const good = claims(1 + 1e-6);
       const bad = claims(1 - 1e-6);
       const mixed: ProofClaims = {
         ...good,
-        ...(short === "sigma" ? { sigma: bad.sigma } : {}),
+        ...(short === "push" ? { pushes: bad.pushes } : {}),
         ...(short === "authority" ? { authority: bad.authority } : {}),
         ...(short === "spread" ? { spreads: bad.spreads } : {}),
       };
@@ -205,7 +205,7 @@ describe("around the search", () => {
   });
   it("finds the cells that a part of the box touches, and their worst bounds", async () => {
     const { leaves } = await prove(subject, only(0.7));
-    const search = leafSearch(leaves, 0);
+    const search = leafSearch(leaves, only(0.7));
     const random = seededRandom(2);
     for (let trial = 0; trial < 50; trial++) {
       const lower = Float64Array.from({ length: 3 }, () => 2 * random.uniform() - 1);
@@ -264,7 +264,7 @@ describe("the table", () => {
       lower: leaves.lower.slice(d),
       upper: leaves.upper.slice(d),
       ...Object.fromEntries(
-        (["status", "claim", "rate", "sigma", "authority"] as const).map((name) => [name, leaves[name].slice(1)]),
+        (["status", "claim", "rate", "authority"] as const).map((name) => [name, leaves[name].slice(1)]),
       ),
     } as typeof leaves;
     expect(faultsOf(cut)[0]).toMatch(/no box covers|gap/);

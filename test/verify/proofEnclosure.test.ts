@@ -13,7 +13,7 @@ import type { Plant } from "../../src/plant/plant.js";
 import { readPlant } from "../../src/plant/readPlant.js";
 import { condition } from "../../src/verify/condition.js";
 import { cellProver } from "../../src/verify/proof/cellProver.js";
-import type { ProofClaims } from "../../src/verify/proof/claims.js";
+import { aloneIn, type ProofClaims } from "../../src/verify/proof/claims.js";
 import { type MarginDirection, spread } from "../../src/verify/spread.js";
 import { randomMlp } from "../support/randomSystem.js";
 import { handPlant } from "./proofPlants.js";
@@ -150,7 +150,10 @@ describe("bounds over cells hold the certificate's quantities at random points",
         const loose = 1.3;
         const claims: ProofClaims = {
           rate: rate - 0.2 * (1 + Math.abs(rate)),
-          sigma: { wbar, most: loose * here.sigma(Float64Array.from(wbar)) },
+          pushes: [wbar, ...aloneIn(wbar)].map((bounds) => ({
+            wbar: bounds,
+            most: loose * here.sigma(Float64Array.from(bounds)),
+          })),
           spreads: directions.map((direction) => ({
             direction,
             most: loose * spread(here.W, model.n, model.rotation, direction),
@@ -172,7 +175,9 @@ describe("bounds over cells hold the certificate's quantities at random points",
         for (let trial = 0; trial < 20; trial++) {
           here.moveTo(point());
           expect(here.rate().rate).toBeGreaterThanOrEqual(result.bounds.rate - 1e-9);
-          expect(here.sigma(Float64Array.from(wbar))).toBeLessThanOrEqual(result.bounds.sigma + 1e-9);
+          claims.pushes.forEach((push, c) => {
+            expect(here.sigma(Float64Array.from(push.wbar))).toBeLessThanOrEqual(result.bounds.pushes[c]! + 1e-9);
+          });
           expect(here.authorityDensity(slower)).toBeLessThanOrEqual(result.bounds.authority * (1 + 1e-9));
           directions.forEach((direction, s) => {
             const value = spread(here.W, model.n, model.rotation, direction);

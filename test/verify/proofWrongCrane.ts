@@ -109,7 +109,9 @@ const stale: Wrong[] = [
     subject: () => craneSubject({}),
     claims: {
       ...onlyCrane,
-      sigma: { wbar: saved.wbar.map((w) => 2 * w), most: 1.05 * craneRates.sigma(Float64Array.from(saved.wbar)).value },
+      pushes: [
+        { wbar: saved.wbar.map((w) => 2 * w), most: 1.05 * craneRates.sigma(Float64Array.from(saved.wbar)).value },
+      ],
     },
   },
   {
@@ -117,7 +119,9 @@ const stale: Wrong[] = [
     subject: () => craneSubject({}),
     claims: {
       ...onlyCrane,
-      sigma: { wbar: [...saved.wbar].reverse(), most: 1.001 * craneRates.sigma(Float64Array.from(saved.wbar)).value },
+      pushes: [
+        { wbar: [...saved.wbar].reverse(), most: 1.001 * craneRates.sigma(Float64Array.from(saved.wbar)).value },
+      ],
     },
   },
   {
@@ -207,7 +211,7 @@ const dropFirst = (t: LeafTable): LeafTable => ({
   status: t.status.slice(1),
   claim: t.claim.slice(1),
   rate: t.rate.slice(1),
-  sigma: t.sigma.slice(1),
+  pushes: t.pushes.slice(1),
   authority: t.authority.slice(1),
 });
 const at = <T extends Float64Array | Uint8Array>(values: T, index: number, change: (value: number) => number): T => {
@@ -221,8 +225,8 @@ export const TAMPERED: [string, (table: LeafTable) => LeafTable][] = [
   ["a rate is raised", (t) => ({ ...t, rate: at(t.rate, 0, (v) => v * 1.2) })],
   ["a rate is not a number", (t) => ({ ...t, rate: at(t.rate, 0, () => Number.NaN) })],
   ["a rate is below the claim", (t) => ({ ...t, rate: at(t.rate, 0, () => 0.01) })],
-  ["sigma is lowered", (t) => ({ ...t, sigma: at(t.sigma, 0, (v) => v * 0.9) })],
-  ["sigma is above the claim", (t) => ({ ...t, sigma: at(t.sigma, 0, (v) => v * 2) })],
+  ["a push is lowered", (t) => ({ ...t, pushes: at(t.pushes, 0, (v) => v * 0.9) })],
+  ["a push is above the claim", (t) => ({ ...t, pushes: at(t.pushes, 0, (v) => v * 2) })],
   ["the authority is above the claim", (t) => ({ ...t, authority: at(t.authority, 0, (v) => v * 2) })],
   ["the authority is lowered", (t) => ({ ...t, authority: at(t.authority, 0, (v) => v * 0.5) })],
   ["a face is moved out", (t) => ({ ...t, upper: at(t.upper, 0, (v) => v + 2 ** -45) })],

@@ -11,7 +11,7 @@ export interface Wrong {
   readonly end?: "throws" | "open";
 }
 
-export const only = (rate: number): ProofClaims => ({ rate, sigma: null, spreads: [], authority: null });
+export const only = (rate: number): ProofClaims => ({ rate, pushes: [], spreads: [], authority: null });
 export const IDENTITY2 = constantFile([
   [1, 0],
   [0, 1],
@@ -53,7 +53,7 @@ const justBelow: Wrong[] = [1e-2, 1e-5, 1e-9].flatMap((by): Wrong[] => {
     {
       name: `sigma ${by} too small`,
       subject: INTEGRATOR,
-      claims: { ...only(0.6), sigma: { wbar: [0.3], most: EXACT.sigma * f } },
+      claims: { ...only(0.6), pushes: [{ wbar: [0.3], most: EXACT.sigma * f }] },
     },
     {
       name: `spread ${by} too small`,
@@ -264,7 +264,7 @@ const symmetries: Wrong[] = [
   {
     name: "a disturbance fixed in the world frame",
     subject: () => plain(unicycle({ G: [["1"], ["0"], ["0"], ["0"]] }), BODY),
-    claims: { ...only(-5), sigma: { wbar: [1], most: 1e9 } },
+    claims: { ...only(-5), pushes: [{ wbar: [1], most: 1e9 }] },
     end: "throws",
   },
 ];

@@ -10,6 +10,7 @@ import { featuresOf } from "../../nets/features.js";
 import { seededRandom } from "../../num/random.js";
 import type { PlantSettings } from "../../plant/plant.js";
 import { inputCorners } from "../../verify/corners.js";
+import type { ListedClaims } from "../../verify/proof/claims.js";
 import { type LeafTable, leavesOf } from "../../verify/proof/leafTable.js";
 import { FILES, type MetricArtifact, readBounds, readModel } from "../artifacts.js";
 import { certifyMetric, SAMPLED_ALLOWANCE, type TubeQuestion, tubeQuestion } from "../certifyMetric.js";
@@ -99,16 +100,14 @@ async function openStates(
 ): Promise<readonly Float64Array[] | null> {
   const { tube } = certifyMetric(model, subject.metric, question, SAMPLED_ALLOWANCE, seededRandom(0));
   if (tube === null) return [];
-  const proof = await proveClaims(subject, tubeClaims(tube, Array.from(question.wbar)), run, PROOF_BOXES);
+  const claims = tubeClaims(tube, Array.from(question.wbar));
+  const proof = await proveClaims(subject, claims, run, PROOF_BOXES);
   if (proof.status === "proved") return null;
-  return [...proof.refuted.map(({ at }) => at), ...openCentres(proof.leaves, tube.spreads.length)].slice(
-    0,
-    2 * HARD_STATES,
-  );
+  return [...proof.refuted.map(({ at }) => at), ...openCentres(proof.leaves, claims)].slice(0, 2 * HARD_STATES);
 }
 
-function openCentres(table: LeafTable, spreads: number): Float64Array[] {
-  return leavesOf(table, spreads)
+function openCentres(table: LeafTable, claims: ListedClaims): Float64Array[] {
+  return leavesOf(table, claims)
     .filter(({ status }) => status === "open")
     .map(({ lower, upper }) => lower.map((low, i) => (low + upper[i]!) / 2));
 }

@@ -37,8 +37,8 @@ export type CellResult =
 export interface CellProver {
   /** Number of active coordinates. */
   readonly dimension: number;
-  /** Number of active coordinates that anything depends on. */
-  readonly usedDimensions: number;
+  /** Indices of the active coordinates that anything depends on. */
+  readonly used: readonly number[];
   /** lower, upper: ends of each active coordinate, in [-1, 1]. */
   examine(lower: Float64Array, upper: Float64Array): CellResult;
   /** A rate that holds on the cell, be it below the claim; -Infinity when none was found. */
@@ -97,7 +97,7 @@ export function cellProver(subject: ProofSubject, claims: ProofClaims): CellProv
       const at = corner === null ? centre.slice() : cornerPoint(corner, lower, upper);
       // a rate whose centre holds and whose corners hold as an affine function has no likely counterexample
       const isWorthTrying =
-        corner !== null || load === Number.POSITIVE_INFINITY || claim === "spread" || claim === "sigma";
+        corner !== null || load === Number.POSITIVE_INFINITY || claim === "spread" || claim === "push";
       const refuted = isWorthTrying ? refute(at) : null;
       if (refuted !== null) return { status: "refuted", claim: refuted, at, split };
       return { status: "undecided", claim, load: Number.isNaN(load) ? Number.POSITIVE_INFINITY : load, split };
@@ -111,10 +111,11 @@ export function cellProver(subject: ProofSubject, claims: ProofClaims): CellProv
       addModelInfluence(cells, condition.W, influence);
       return undecided("spread", spreads[wide]! / claims.spreads[wide]!.most, null);
     }
-    const sigma = claims.sigma === null ? 0 : onCell.sigma(claims.sigma.wbar);
-    if (claims.sigma !== null && !(sigma <= claims.sigma.most)) {
+    const pushes = claims.pushes.map(({ wbar }) => onCell.sigma(wbar));
+    const hard = pushes.findIndex((value, c) => !(value <= claims.pushes[c]!.most));
+    if (hard >= 0) {
       addModelInfluence(cells, condition.W, influence);
-      return undecided("sigma", sigma / claims.sigma.most, null);
+      return undecided("push", pushes[hard]! / claims.pushes[hard]!.most, null);
     }
     let authority = 0;
     if (claims.authority !== null && m > 0) {
@@ -125,7 +126,7 @@ export function cellProver(subject: ProofSubject, claims: ProofClaims): CellProv
       // a little more than gain * rho, so that dividing by the gain again gives no less than rho
       authority = Math.min(claims.authority.most, gain * leastRho(claims.authority.rate, rho) * GROW);
     }
-    return { status: "proved", bounds: { rate: largestRate(), sigma, spreads, authority } };
+    return { status: "proved", bounds: { rate: largestRate(), pushes, spreads, authority } };
   };
 
   /** A rate of the cell's own, at least the claimed one. */
@@ -206,7 +207,7 @@ export function cellProver(subject: ProofSubject, claims: ProofClaims): CellProv
     ) => corners.some((corner) => isCertainlyPositive(points, matrices, [1, ...corner, ...rest], size));
     if (n > m && fails([...C, WN], atPoint.rateCorners, [2 * claims.rate], n - m)) return "rate";
     if (atPoint.spreads.some((spread, s) => spread.lower() > claims.spreads[s]!.most)) return "spread";
-    if (claims.sigma !== null && sigmaLower(claims.sigma.wbar) > claims.sigma.most) return "sigma";
+    if (claims.pushes.some(({ wbar, most }) => sigmaLower(wbar) > most)) return "push";
     if (claims.authority !== null && m > 0) {
       const gain = gainLower();
       const rho = stepUp(claims.authority.most / gain);
@@ -262,8 +263,9 @@ export function cellProver(subject: ProofSubject, claims: ProofClaims): CellProv
       const value = bounds.spreads[s];
       if (value === undefined || !(value <= most) || !(onCell.spreads[s]!.upper() <= value)) return false;
     }
-    if (claims.sigma !== null) {
-      if (!(bounds.sigma <= claims.sigma.most) || !(onCell.sigma(claims.sigma.wbar) <= bounds.sigma)) return false;
+    for (const [c, { wbar, most }] of claims.pushes.entries()) {
+      const value = bounds.pushes[c];
+      if (value === undefined || !(value <= most) || !(onCell.sigma(wbar) <= value)) return false;
     }
     if (claims.authority !== null && m > 0) {
       if (!(bounds.authority <= claims.authority.most)) return false;
@@ -273,7 +275,7 @@ export function cellProver(subject: ProofSubject, claims: ProofClaims): CellProv
     return true;
   };
 
-  return { dimension, usedDimensions: cells.used.length, examine, rateBelow, refute, confirm };
+  return { dimension, used: cells.used, examine, rateBelow, refute, confirm };
 }
 
 /** How much each dimension bends W, and a little of how much it tilts it. */
@@ -293,8 +295,10 @@ function addModelInfluence(evaluator: TaylorEvaluator, matrix: readonly Node[], 
 
 function checkClaims(claims: ProofClaims, p: number): void {
   if (!Number.isFinite(claims.rate)) throw new Error(`a proof needs a finite rate to prove; given ${claims.rate}`);
-  if (claims.sigma !== null && claims.sigma.wbar.length !== p)
-    throw new Error(`a proof of sigma needs one bound a leftover channel: ${p}; given ${claims.sigma.wbar.length}`);
-  if (claims.sigma?.wbar.some((w) => !(w >= 0 && Number.isFinite(w))))
-    throw new Error("a proof of sigma needs finite bounds of 0 or more for every leftover channel");
+  for (const { wbar } of claims.pushes) {
+    if (wbar.length !== p)
+      throw new Error(`a proof of a push needs one bound a leftover channel: ${p}; given ${wbar.length}`);
+    if (wbar.some((w) => !(w >= 0 && Number.isFinite(w))))
+      throw new Error("a proof of a push needs finite bounds of 0 or more for every leftover channel");
+  }
 }

@@ -2,7 +2,7 @@
  * Finds the proved cells that a part of the box touches, by a tree of bounding boxes: what a tube along a plan may rely on
  * there.
  */
-import type { CellBounds } from "./claims.js";
+import type { CellBounds, ListedClaims } from "./claims.js";
 import { type Leaf, type LeafTable, leavesOf } from "./leafTable.js";
 
 export interface LeafSearch {
@@ -19,9 +19,9 @@ interface Branch {
   readonly parts: readonly Branch[];
 }
 
-/** spreads: number of spread claims of the table. */
-export function leafSearch(table: LeafTable, spreads: number): LeafSearch {
-  const leaves = leavesOf(table, spreads);
+/** claims: those of the table. */
+export function leafSearch(table: LeafTable, claims: ListedClaims): LeafSearch {
+  const leaves = leavesOf(table, claims);
   const root = leaves.length === 0 ? null : branch(leaves, table.dimension);
   const touching = (lower: Float64Array, upper: Float64Array): Leaf[] => {
     const found: Leaf[] = [];
@@ -40,7 +40,7 @@ export function leafSearch(table: LeafTable, spreads: number): LeafSearch {
     const bounds = found.map((leaf) => leaf.bounds);
     return bounds.reduce((a, b) => ({
       rate: Math.min(a.rate, b.rate),
-      sigma: Math.max(a.sigma, b.sigma),
+      pushes: a.pushes.map((value, c) => Math.max(value, b.pushes[c]!)),
       spreads: a.spreads.map((value, s) => Math.max(value, b.spreads[s]!)),
       authority: Math.max(a.authority, b.authority),
     }));

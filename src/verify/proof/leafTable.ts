@@ -3,7 +3,7 @@
  * claims hold on it, and its own bounds are at least as good), refuted (a claim certainly fails at a point of it) or open.
  * Columns are plain numbers, so the table can be saved, and resumed from.
  */
-import type { CellBounds, ClaimName } from "./claims.js";
+import type { CellBounds, ClaimName, ListedClaims } from "./claims.js";
 
 export type LeafStatus = "proved" | "refuted" | "open";
 
@@ -18,7 +18,7 @@ export interface Leaf {
 }
 
 const STATUS: readonly LeafStatus[] = ["open", "proved", "refuted"];
-const CLAIMS: readonly ClaimName[] = ["rate", "sigma", "spread", "authority", "definite"];
+const CLAIMS: readonly ClaimName[] = ["rate", "push", "spread", "authority", "definite"];
 
 /** The same, one array a column. */
 export interface LeafTable {
@@ -29,16 +29,18 @@ export interface LeafTable {
   readonly upper: Float64Array;
   /** 0 open, 1 proved, 2 refuted. */
   readonly status: Uint8Array;
-  /** 0: none; else 1 + place in rate, sigma, spread, authority, definite. */
+  /** 0: none; else 1 + place in rate, push, spread, authority, definite. */
   readonly claim: Uint8Array;
   readonly rate: Float64Array;
-  readonly sigma: Float64Array;
+  /** count x number of push claims. */
+  readonly pushes: Float64Array;
   /** count x number of spread claims. */
   readonly spreads: Float64Array;
   readonly authority: Float64Array;
 }
 
-export function leafTable(leaves: readonly Leaf[], dimension: number, spreads: number): LeafTable {
+export function leafTable(leaves: readonly Leaf[], dimension: number, claims: ListedClaims): LeafTable {
+  const [pushes, spreads] = [claims.pushes.length, claims.spreads.length];
   const count = leaves.length;
   const table: LeafTable = {
     dimension,
@@ -48,7 +50,7 @@ export function leafTable(leaves: readonly Leaf[], dimension: number, spreads: n
     status: new Uint8Array(count),
     claim: new Uint8Array(count),
     rate: new Float64Array(count),
-    sigma: new Float64Array(count),
+    pushes: new Float64Array(count * pushes),
     spreads: new Float64Array(count * spreads),
     authority: new Float64Array(count),
   };
@@ -58,7 +60,7 @@ export function leafTable(leaves: readonly Leaf[], dimension: number, spreads: n
     table.status[i] = STATUS.indexOf(leaf.status);
     table.claim[i] = leaf.claim === null ? 0 : 1 + CLAIMS.indexOf(leaf.claim);
     table.rate[i] = leaf.bounds.rate;
-    table.sigma[i] = leaf.bounds.sigma;
+    table.pushes.set(leaf.bounds.pushes, i * pushes);
     table.spreads.set(leaf.bounds.spreads, i * spreads);
     table.authority[i] = leaf.bounds.authority;
   }
@@ -66,11 +68,13 @@ export function leafTable(leaves: readonly Leaf[], dimension: number, spreads: n
 }
 
 /** Leaves of a table; throws when its columns do not fit each other. */
-export function leavesOf(table: LeafTable, spreads: number): Leaf[] {
+export function leavesOf(table: LeafTable, claims: ListedClaims): Leaf[] {
+  const [pushes, spreads] = [claims.pushes.length, claims.spreads.length];
   const { dimension: d, count } = table;
   const fits =
     [table.lower, table.upper].every((column) => column.length === count * d) &&
-    [table.status, table.claim, table.rate, table.sigma, table.authority].every((column) => column.length === count) &&
+    [table.status, table.claim, table.rate, table.authority].every((column) => column.length === count) &&
+    table.pushes.length === count * pushes &&
     table.spreads.length === count * spreads;
   if (!fits)
     throw new Error("a table of proved boxes whose columns have different lengths: it was cut or is of another proof");
@@ -85,7 +89,7 @@ export function leavesOf(table: LeafTable, spreads: number): Leaf[] {
       claim: CLAIMS[table.claim[i]! - 1] ?? null,
       bounds: {
         rate: table.rate[i]!,
-        sigma: table.sigma[i]!,
+        pushes: Array.from(table.pushes.subarray(i * pushes, (i + 1) * pushes)),
         spreads: Array.from(table.spreads.subarray(i * spreads, (i + 1) * spreads)),
         authority: table.authority[i]!,
       },

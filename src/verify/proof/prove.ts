@@ -12,7 +12,7 @@
 
 import { cellHeap, type OpenCell } from "./cellHeap.js";
 import { type CellProver, type CellResult, cellProver } from "./cellProver.js";
-import type { CellBounds, ClaimName, ProofClaims, ProofSubject } from "./claims.js";
+import type { CellBounds, ClaimName, ListedClaims, ProofClaims, ProofSubject } from "./claims.js";
 import { type Leaf, type LeafTable, leafTable, leavesOf, shareOf } from "./leafTable.js";
 
 export interface ProofProgress {
@@ -78,7 +78,7 @@ export async function prove(
 ): Promise<ProofResult> {
   const prover = cellProver(subject, claims);
   const { dimension } = prover;
-  const dimensions = Math.max(1, prover.usedDimensions);
+  const dimensions = Math.max(1, prover.used.length);
   const maxBoxes = options.maxBoxes ?? MAX_BOXES;
   const maxDepth = dimensions * (options.depthPerDimension ?? DEPTH_PER_DIMENSION);
   const maxRefuted = options.maxRefuted ?? MAX_REFUTED;
@@ -86,12 +86,12 @@ export async function prove(
   const leaves: Leaf[] = [];
   const refuted: RefutedPoint[] = [];
   const heap = cellHeap();
-  start(heap, leaves, options.resume, dimension, claims.spreads.length);
+  start(heap, leaves, options.resume, dimension, claims);
   let boxes = 0;
   let provedShare = leaves.reduce((sum, leaf) => sum + shareOf(leaf.lower, leaf.upper), 0);
 
   const close = (cell: OpenCell, status: "refuted" | "open", claim: ClaimName): void => {
-    leaves.push({ ...box(cell), status, claim, bounds: unknownBounds(prover, cell, claims.spreads.length) });
+    leaves.push({ ...box(cell), status, claim, bounds: unknownBounds(prover, cell, claims) });
   };
   const halve = (cell: OpenCell, axis: number, load: number): void => {
     const middle = cell.lower[axis]! / 2 + cell.upper[axis]! / 2;
@@ -146,12 +146,12 @@ function box({ lower, upper }: OpenCell) {
   return { lower, upper };
 }
 
-function unknownBounds(prover: CellProver, { lower, upper }: OpenCell, spreads: number): CellBounds {
+function unknownBounds(prover: CellProver, { lower, upper }: OpenCell, claims: ListedClaims): CellBounds {
   const none = Number.POSITIVE_INFINITY;
   return {
     rate: prover.rateBelow(lower, upper),
-    sigma: none,
-    spreads: new Array<number>(spreads).fill(none),
+    pushes: claims.pushes.map(() => none),
+    spreads: claims.spreads.map(() => none),
     authority: none,
   };
 }
@@ -161,7 +161,7 @@ function start(
   leaves: Leaf[],
   resume: LeafTable | undefined,
   dimension: number,
-  spreads: number,
+  claims: ListedClaims,
 ): void {
   if (resume === undefined) {
     const lower = new Float64Array(dimension).fill(-1);
@@ -172,7 +172,7 @@ function start(
     throw new Error(
       `boxes of ${resume.dimension} coordinates cannot be resumed for a plant with ${dimension} active ones`,
     );
-  for (const leaf of leavesOf(resume, spreads)) {
+  for (const leaf of leavesOf(resume, claims)) {
     if (leaf.status === "proved") leaves.push(leaf);
     else
       heap.push({
@@ -205,7 +205,7 @@ function summary(
     provedRate: Number.isFinite(rate) ? rate : null,
     worst: {
       rate: proved.reduce((least, bounds) => Math.min(least, bounds.rate), Number.POSITIVE_INFINITY),
-      sigma: most((b) => b.sigma),
+      pushes: claims.pushes.map((_, c) => most((b) => b.pushes[c]!)),
       spreads: claims.spreads.map((_, s) => most((b) => b.spreads[s]!)),
       authority: most((b) => b.authority),
     },
@@ -213,7 +213,7 @@ function summary(
     refutedShare: share("refuted"),
     openShare: share("open"),
     refuted,
-    leaves: leafTable(leaves, dimension, claims.spreads.length),
+    leaves: leafTable(leaves, dimension, claims),
     boxes,
   };
 }

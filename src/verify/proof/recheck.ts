@@ -29,7 +29,7 @@ export function recheck(
     return failed(`the boxes have ${table.dimension} coordinates, the plant ${prover.dimension} active ones`);
   let leaves: ReturnType<typeof leavesOf>;
   try {
-    leaves = leavesOf(table, claims.spreads.length);
+    leaves = leavesOf(table, claims);
   } catch (error) {
     return failed((error as Error).message);
   }

@@ -4,7 +4,7 @@
  */
 import type { MarginDirection } from "../spread.js";
 import type { Survey } from "../survey.js";
-import type { ProofClaims } from "./claims.js";
+import { aloneIn, type ProofClaims } from "./claims.js";
 
 export interface ClaimRequest {
   /** SI, one a leftover channel. */
@@ -24,7 +24,10 @@ export function sampledClaims(seen: Survey, { wbar, directions, tubeRate, gap }:
   const { rate } = seen.worst;
   return {
     rate: rate - gap * Math.abs(rate),
-    sigma: { wbar, most: more(seen.sigma(Float64Array.from(wbar)).value) },
+    pushes: aloneIn(wbar).map((alone) => ({
+      wbar: alone,
+      most: more(seen.sigma(Float64Array.from(alone)).value),
+    })),
     spreads: directions.map((direction) => ({ direction, most: more(seen.spread(direction).value) })),
     authority: tubeRate === null ? null : { rate: tubeRate, most: more(seen.authorityDensity(tubeRate).value) },
   };
