@@ -3,14 +3,14 @@
  *   0 done and the certificate holds as asked    2 misuse or bad input
  *   3 done, but it does not hold as asked        1 anything else
  */
-import { Command, CommanderError } from "commander";
+import { Command, CommanderError, Option } from "commander";
 import { LogError } from "../logs/logError.js";
 import { STAGES } from "../pipeline/job.js";
 import { RunFolderError } from "../pipeline/runFolder.js";
 import { FAIRLEAD_VERSION } from "../pipeline/version.js";
 import { doctor } from "./doctor.js";
 import { InputError } from "./inputError.js";
-import { lineageCommand, recheckCommand, refitCommand, runCommand, stageCommand } from "./runCommand.js";
+import { lineageCommand, pathCommand, recheckCommand, refitCommand, runCommand, stageCommand } from "./runCommand.js";
 
 export type ExitStatus = 0 | 1 | 2 | 3;
 
@@ -96,6 +96,16 @@ function describe(streams: Streams, signal: AbortSignal, finish: (status: ExitSt
     .option("--always", "refit although no change is found", false)
     .option("--seed <n>", "seed of everything random; default: the earlier run's", wholeNumber)
     .action(async (dir: string, options: RefitOptions) => finish(await refitCommand(dir, options, streams, signal)));
+  common(program.command("path <dir> <plan>").description("the tube along a plan: a table of time, states and inputs"))
+    .option("--out <dir>", "folder for the results; default: path-NAME in the run folder")
+    .addOption(
+      new Option("--law <rate>", "tracking law: the certificate's rate, or the fastest that is proved along the plan")
+        .choices(["fixed", "plan"])
+        .default("fixed"),
+    )
+    .action(async (dir: string, plan: string, options: Parameters<typeof pathCommand>[2]) =>
+      finish(await pathCommand(dir, plan, options, streams, signal)),
+    );
   program
     .command("lineage <dir>")
     .description("a run, the run that it refits, and so on")

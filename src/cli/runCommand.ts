@@ -1,13 +1,14 @@
 /** `fairlead run` and the single stages: read the plant file, run the job, print the verdict. */
 import { readFileSync } from "node:fs";
 import { availableParallelism } from "node:os";
-import { resolve } from "node:path";
+import { basename, extname, join, resolve } from "node:path";
 import { FILES } from "../pipeline/artifacts.js";
 import { type JobOutcome, runJob, runOneStage } from "../pipeline/job.js";
 import { lineageOf } from "../pipeline/lineage.js";
+import { PLAN_FILES, runPlan } from "../pipeline/planRun.js";
 import { recheckRun } from "../pipeline/recheckRun.js";
 import { runRefit } from "../pipeline/refit.js";
-import { type Manifest, openRunFolder, type RunFolder, runDigest } from "../pipeline/runFolder.js";
+import { type Manifest, openResultFolder, openRunFolder, type RunFolder, runDigest } from "../pipeline/runFolder.js";
 import type { ParentRun, Stage, StageOutcome } from "../pipeline/stage.js";
 import { codeHash } from "../pipeline/version.js";
 import type { Plant } from "../plant/plant.js";
@@ -78,6 +79,32 @@ export async function refitCommand(
   const status = conclude({ summary: folder.readJson(FILES.summary) }, { ...options, json: false }, streams, folder);
   streams.err.write(`${change.refit.planner.text}\npage: ${folder.file(FILES.changePage)}\n`);
   return status;
+}
+
+/** `fairlead path DIR PLAN`. */
+export async function pathCommand(
+  dir: string,
+  plan: string,
+  options: { json: boolean; quiet: boolean; out?: string; law: "fixed" | "plan" },
+  streams: Streams,
+  signal: AbortSignal,
+): Promise<ExitStatus> {
+  const { folder, loaded } = openRun(dir);
+  const out = openResultFolder(resolve(options.out ?? join(dir, `path-${basename(plan, extname(plan))}`)));
+  const progress = options.quiet ? silentProgress : terminalProgress(streams.err);
+  const summary = await runPlan({
+    folder,
+    plant: loaded.plant,
+    planPath: resolve(plan),
+    law: options.law,
+    out,
+    progress: (done, total, note) => progress.update("path", done, total, note),
+    signal,
+  });
+  progress.settle();
+  if (options.json) streams.out.write(`${JSON.stringify(summary, null, 1)}\n`);
+  streams.err.write(`${[summary.text, ...summary.problems].join("\n")}\npage: ${out.file(PLAN_FILES.page)}\n`);
+  return { whole: 0, ends: 3, refused: 2 }[summary.status] as ExitStatus;
 }
 
 /** `fairlead lineage DIR`: the run, the run that it refits, and so on. */

@@ -80,6 +80,8 @@ const LAST_DECAY = 0.02;
 const PROVER_ROUNDS = 3;
 const LEARNING_RATE = 1e-2;
 const RATE_LEARNING_RATE = 1e-2;
+/** From a network of an earlier run the steps are shorter, so as not to leave a place that is nearly right. */
+const WARM_STEP = 0.3;
 
 export async function learnMetric(
   model: ControlAffineModel,
@@ -114,6 +116,7 @@ export async function learnMetric(
   const history: LearnStep[] = [];
   const perRound = Math.ceil(settings.steps / settings.rounds);
   const total = perRound * settings.rounds;
+  const stepScale = settings.start.kind === "network" ? WARM_STEP : 1;
   let lambda = settings.rate ?? settings.initialRate;
 
   const trainRound = async (round: number): Promise<void> => {
@@ -125,7 +128,7 @@ export async function learnMetric(
         ...Array.from({ length: BATCH - hardCount }, () => pool[pick.integer(POOL)]!),
         ...Array.from({ length: hardCount }, () => hard[pick.integer(hard.length)]!),
       ];
-      const decay = 0.5 * (1 + Math.cos(Math.PI * Math.min(1, done / total))) + LAST_DECAY;
+      const decay = stepScale * (0.5 * (1 + Math.cos(Math.PI * Math.min(1, done / total))) + LAST_DECAY);
       const value = trainer.step(batch, lambda, LEARNING_RATE * decay);
       if (done % 10 === 0) {
         history.push({ round, step: done, rate: lambda, margin: value.margin, shortfall: value.shortfall });

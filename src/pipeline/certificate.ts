@@ -53,7 +53,8 @@ export interface CertificateFile {
   readonly note: string;
   /** Null: there is no metric. */
   readonly evidence: {
-    readonly worstRate: number;
+    /** 1/s; null: infinite, as many inputs as states, or the metric is not positive definite somewhere. */
+    readonly worstRate: number | null;
     /** Active coordinates of the worst state, scaled. */
     readonly worstState: readonly number[];
     readonly choice: RateChoice;
@@ -88,7 +89,7 @@ export function certificateFile(name: string, note: string, certificate: Certifi
     name,
     note,
     evidence: {
-      worstRate: survey.worst.rate,
+      worstRate: Number.isFinite(survey.worst.rate) ? survey.worst.rate : null,
       worstState: Array.from(survey.worst.at),
       choice,
       tube,

@@ -101,7 +101,10 @@ export function sampledExtremes(
   // within a window of the bound each channel may be worst at a state of its own
   const pushes = aloneIn(Array.from(wbar)).map((alone) => worse(seen.sigma(Float64Array.from(alone)).value));
   return {
-    usableRate: seen.worst.rate - allowance * Math.abs(seen.worst.rate),
+    // infinite where as many inputs as states leave nothing to contract
+    usableRate: Number.isFinite(seen.worst.rate)
+      ? seen.worst.rate - allowance * Math.abs(seen.worst.rate)
+      : seen.worst.rate,
     pushes,
     sigma: sumOf(pushes),
     authorityDensity: (rate) => worse(seen.authorityDensity(rate).value),
@@ -145,7 +148,7 @@ function tubeAt(
   const authorityDensity = extremes.authorityDensity(point.rate);
   return {
     rate: point.rate,
-    claimedRate: Number.isFinite(usableRate) ? usableRate : point.rate,
+    claimedRate: Number.isFinite(usableRate) ? usableRate : 2 * point.rate,
     radius,
     pushes,
     sigma,

@@ -39,7 +39,7 @@ export function recheckRun(
   }
   const { wbar, window } = readBounds(folder, "fitted");
   const claims = tubeClaims(tube, Array.from(wbar));
-  const faults = tubeFaults(folder, plant, tube, window);
+  const faults = [...changedFiles(folder), ...tubeFaults(folder, plant, tube, wbar, window)];
   const boxes = readBoxes(folder, plant, claims);
   if (typeof boxes === "string") return { holds: false, boxes: 0, faults: [...faults, boxes] };
   const subject = { plant, residual: folder.readJson<ResidualFile>(FILES.residual), metric: made.metric };
@@ -56,8 +56,22 @@ function readBoxes(folder: RunFolder, plant: Plant, claims: ListedClaims): LeafT
   }
 }
 
+/** A file of another run may pass by itself: what the manifest says that this run made must still be there. */
+function changedFiles(folder: RunFolder): string[] {
+  return Object.values(folder.manifest()?.stages ?? {})
+    .flatMap(({ files }) => Object.entries(files))
+    .filter(([name, hash]) => !folder.has(name) || folder.hash(name) !== hash)
+    .map(([name]) => `${name} is not the file that the run made: its hash is not the manifest's`);
+}
+
 /** What does not follow: radius and authority from the claims, margins of the summary from the tube. */
-function tubeFaults(folder: RunFolder, plant: Plant, tube: CertifiedTube, window: number): string[] {
+function tubeFaults(
+  folder: RunFolder,
+  plant: Plant,
+  tube: CertifiedTube,
+  wbar: Float64Array,
+  window: number,
+): string[] {
   const faults: string[] = [];
   const expect = (what: string, given: number | null | undefined, derived: number): void => {
     if (given === undefined || given === null || !(Math.abs(given - derived) <= 1e-9 * Math.abs(derived))) {
@@ -69,11 +83,17 @@ function tubeFaults(folder: RunFolder, plant: Plant, tube: CertifiedTube, window
   expect("the tube's radius", tube.radius, radius);
   expect("the tube's authority", tube.authority, (radius * tube.authorityDensity) / 2);
   if (!(tube.rate < tube.claimedRate)) faults.push("the tube's rate is not below the claimed rate");
-  const summary = folder.readJson<Summary>(FILES.summary).certificates.find(({ name }) => name === "learned");
+  const { certificates, disturbance } = folder.readJson<Summary>(FILES.summary);
+  for (const [c, { name, unit }] of plant.leftover.entries())
+    expect(`the summary's disturbance bound of ${name}`, disturbance.channels[c]?.bound, wbar[c]! / unit.factor);
+  const summary = certificates.find(({ name }) => name === "learned");
   expect("the summary's rate", summary?.rate, tube.rate);
-  for (const [name, margin] of Object.entries(marginsOf(plant, tube))) {
+  expect("the summary's tube radius", summary?.tubeRadius, tube.radius);
+  const margins = marginsOf(plant, tube);
+  for (const [name, margin] of Object.entries(margins))
     expect(`the summary's margin of ${name}`, summary?.margins[name], margin);
-  }
+  for (const name of Object.keys(summary?.margins ?? {}))
+    if (margins[name] === undefined) faults.push(`the summary's margin of ${name} follows from no claim`);
   for (const { name } of plant.inputs)
     expect(`the summary's authority of ${name}`, summary?.authority[name], tube.authority);
   return faults;

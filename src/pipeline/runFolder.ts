@@ -63,20 +63,30 @@ export interface RunFolder {
   remove(name: string): void;
 }
 
+/** A folder for results that are no run of their own: made when it is not there, and written like a run folder. */
+export function openResultFolder(path: string): RunFolder {
+  mkdirSync(path, { recursive: true });
+  return folderAt(path);
+}
+
 /** Opens DIR, making it when `create`; leftovers of a killed write are removed. */
 export function openRunFolder(path: string, create: boolean): RunFolder {
   if (!existsSync(path)) {
     if (!create)
       throw new RunFolderError(`${path}: no such run folder; make one with 'fairlead run PLANT.yaml --out ${path}'`);
-    mkdirSync(path, { recursive: true });
+    reached(path, () => mkdirSync(path, { recursive: true }));
   }
-  const entries = readdirSync(path);
+  const entries = reached(path, () => readdirSync(path));
   if (entries.length > 0 && !entries.includes(MANIFEST) && entries.some((name) => !name.endsWith(TEMPORARY))) {
     throw new RunFolderError(
       `${path}: holds files but no ${MANIFEST}, so it is not a run folder; give a new or empty folder to --out`,
     );
   }
   for (const name of entries) if (name.endsWith(TEMPORARY)) rmSync(join(path, name), { force: true });
+  return folderAt(path);
+}
+
+function folderAt(path: string): RunFolder {
   const file = (name: string): string => join(path, name);
   const readText = (name: string): string => {
     try {
@@ -105,9 +115,32 @@ export function openRunFolder(path: string, create: boolean): RunFolder {
     has: (name) => existsSync(file(name)),
     hash: (name) => sha256(readFileSync(file(name))),
     remove: (name) => rmSync(file(name), { force: true }),
-    manifest: () => (existsSync(file(MANIFEST)) ? readJson<Manifest>(MANIFEST) : null),
+    manifest: () => (existsSync(file(MANIFEST)) ? checked(file(MANIFEST), readJson<unknown>(MANIFEST)) : null),
     writeManifest: (manifest) => writeJson(MANIFEST, manifest),
   };
+}
+
+/** What the file system says of a path that cannot be a run folder, as misuse. */
+function reached<T>(path: string, act: () => T): T {
+  try {
+    return act();
+  } catch (error) {
+    const { code } = error as NodeJS.ErrnoException;
+    throw new RunFolderError(`${path}: no folder can be opened here (${code}); give a new or empty folder to --out`);
+  }
+}
+
+function checked(path: string, value: unknown): Manifest {
+  const { format, stages, plantPath, seed } = (value ?? {}) as Partial<Manifest>;
+  const isManifest =
+    format === 1 &&
+    typeof stages === "object" &&
+    stages !== null &&
+    typeof plantPath === "string" &&
+    Number.isInteger(seed);
+  if (!isManifest)
+    throw new RunFolderError(`${path}: not a manifest of format 1; delete the folder and make the run again`);
+  return value as Manifest;
 }
 
 /** Hash over what the stages of a run made, but for the report, which holds wall seconds. */

@@ -96,14 +96,7 @@ export async function runStage(stage: Stage, context: StageContext, force: boole
   if (!force && record !== undefined && record.inputs === inputs && stage.makes.every(isAsRecorded)) {
     return { name: stage.name, reused: true, seconds: record.seconds, note: "" };
   }
-  for (const name of stage.makes) folder.remove(name);
-  const from = performance.now();
-  const note = await stage.run(context);
-  const seconds = (performance.now() - from) / 1000;
-  const files = Object.fromEntries(
-    stage.makes.filter((name) => folder.has(name)).map((name) => [name, folder.hash(name)]),
-  );
-  const manifest: Manifest = {
+  const manifestWith = (stages: Manifest["stages"]): Manifest => ({
     format: 1,
     tool: { name: "fairlead", version: FAIRLEAD_VERSION, code: context.code },
     runtime: context.runtime,
@@ -112,8 +105,17 @@ export async function runStage(stage: Stage, context: StageContext, force: boole
     seed: context.seed,
     parent: context.parent === null ? null : { path: context.parent.path, digest: context.parent.digest },
     engine: engine === null ? (before?.engine ?? null) : { name: engine.name, version: engine.version },
-    stages: { ...before?.stages, [stage.name]: { inputs, files, seconds } },
-  };
-  folder.writeManifest(manifest);
+    stages,
+  });
+  // a folder whose very first stage is killed is a run folder all the same
+  if (before === null) folder.writeManifest(manifestWith({}));
+  for (const name of stage.makes) folder.remove(name);
+  const from = performance.now();
+  const note = await stage.run(context);
+  const seconds = (performance.now() - from) / 1000;
+  const files = Object.fromEntries(
+    stage.makes.filter((name) => folder.has(name)).map((name) => [name, folder.hash(name)]),
+  );
+  folder.writeManifest(manifestWith({ ...before?.stages, [stage.name]: { inputs, files, seconds } }));
   return { name: stage.name, reused: false, seconds, note };
 }

@@ -128,18 +128,26 @@ function certificateSummary(plant: Plant, kind: CertificateKind, file: Certifica
 function refusal(
   plant: Plant,
   choice: RateChoice,
-  worstRate: number,
+  worstRate: number | null,
   worstState: readonly number[],
 ): Pick<CertificateSummary, "status" | "reason"> {
   const { authorityLimit, roomLimit, rate } = plant.settings;
   if (choice.status === "authorityExceeded") {
     const least = percent(choice.least.authority);
-    const reason = `it needs at least ${least} of the half-range; the limit is ${percent(authorityLimit)}`;
+    const what = rate === null ? "it needs at least" : `at the asked rate of ${rate} 1/s it needs`;
+    const reason = `${what} ${least} of the half-range; the limit is ${percent(authorityLimit)}`;
     return { status: "authorityExceeded", reason };
   }
   if (choice.status === "roomExceeded") {
     const reason = `its margins take at least ${percent(choice.least.room)} of a state's half-range from plans; the limit is ${percent(roomLimit)}`;
     return { status: "roomExceeded", reason };
+  }
+  if (worstRate === null) {
+    const reason =
+      choice.curve.length === 0
+        ? `it is not positive definite at ${stateWords(plant, worstState)}`
+        : `${rate} 1/s was asked for; no rate that fast is within the authority limit`;
+    return { status: "fails", reason };
   }
   const asked = rate === null || worstRate <= 0 ? "" : `; ${rate} 1/s was asked for`;
   const where = stateWords(plant, worstState);

@@ -37,6 +37,9 @@ export interface Drift {
   readonly channels: readonly DriftedChannel[];
 }
 
+/** New runs that are read for what a change is made of. */
+const READ_RUNS = 24;
+
 /** Throws nothing; runs too short for a window have no score and are left out. */
 export function driftOf(
   model: ControlAffineModel,
@@ -63,7 +66,7 @@ export function driftOf(
       ),
     ),
   );
-  const runs = scored.map(({ run }) => run);
+  const runs = scored.slice(0, READ_RUNS).map(({ run }) => run);
   return {
     level,
     earlierRuns: earlier.length,

@@ -2,8 +2,8 @@
  * Fits the unknown terms: one small tanh network each, trained together over windows of the fit runs (trainingWindows),
  * Huber loss (Huber, Ann. Math. Stat. 35(1), 1964) on errors in units of the prior's own, Adam (Kingma and Ba, ICLR 2015)
  * with a cosine-decaying rate, the best weights on the validation runs kept. The networks start as zero, so that the
- * first candidate is the prior itself. From an earlier residual of the same plant only the output layers are fitted: the
- * hidden layers hold what curves such terms have, and a few runs are enough for the rest (test/bench/refit.json).
+ * first candidate is the prior itself. From an earlier residual of the same plant only the last layers are fitted: the
+ * first ones hold what curves such terms have, and a few runs are enough for the rest (test/bench/refit.json).
  */
 import type * as Tf from "@tensorflow/tfjs-core";
 import type { Engine } from "../engine/openEngine.js";
@@ -63,8 +63,11 @@ const VALIDATION_SHARE = 0.2;
 const VALIDATION_WINDOWS = 512;
 const CHECK_EVERY = 50;
 const LEARNING_RATE = 1e-2;
-/** Share of the steps when it starts from an earlier residual. */
-const WARM_STEPS = 0.3;
+/** From an earlier residual: share of the steps, and the last layers that are fitted, with few runs and with more. */
+const WARM = [
+  { runs: 0, steps: 0.3, layers: 1 },
+  { runs: 20, steps: 0.5, layers: 2 },
+] as const;
 /** Where the loss turns from square to linear, in units of the prior's error. */
 const HUBER = 0.5;
 
@@ -82,12 +85,13 @@ export async function fitResidual(
     return { status: "nothingUnknown", ...none };
   }
   const windows = fitWindows(plant, runs, random);
-  const networks = termNetworks(tf, plant, windows, random, start);
+  const warm = start === null ? null : WARM.findLast(({ runs: least }) => windows.trainingRuns >= least)!;
+  const networks = termNetworks(tf, plant, windows, random, start, warm?.layers ?? null);
   const optimizer = tf.train.adam(LEARNING_RATE);
   const draw = random.stream("windows");
   const heldOut = Array.from({ length: VALIDATION_WINDOWS }, () => windows.validation(draw));
   const lossOf = (batch: readonly Window[]): number => tf.tidy(() => networks.loss(batch).dataSync()[0]!);
-  const steps = Math.ceil((start === null ? 1 : WARM_STEPS) * plant.settings.residualNet.steps);
+  const steps = Math.ceil((warm?.steps ?? 1) * plant.settings.residualNet.steps);
   const history: FitStep[] = [];
   let best = { validation: Number.POSITIVE_INFINITY, step: 0, residual: networks.toFile() };
   try {
@@ -187,6 +191,7 @@ function termNetworks(
   { shape, rates, scales }: FitWindows,
   random: Random,
   start: ResidualFile | null,
+  fittedLayers: number | null,
 ) {
   const { unknowns } = plant;
   const { width } = plant.settings.residualNet;
@@ -240,7 +245,7 @@ function termNetworks(
   };
   return {
     loss,
-    variables: terms.flatMap(({ net }) => (start === null ? net.variables : net.variables.slice(-2))),
+    variables: terms.flatMap(({ net }) => (fittedLayers === null ? net.variables : net.variables.slice(-2 * fittedLayers))),
     toFile: (): ResidualFile => ({
       terms: unknowns.map(({ state, input }, j) => {
         const { features, net, outputScale } = terms[j]!;

@@ -1,6 +1,6 @@
 // The real binary on small plants in temporary folders of its own.
 import { type ChildProcess, spawn } from "node:child_process";
-import { mkdtempSync, readFileSync, rmSync, writeFileSync } from "node:fs";
+import { cpSync, mkdtempSync, readFileSync, rmSync, symlinkSync, writeFileSync } from "node:fs";
 import { tmpdir } from "node:os";
 import { join, resolve } from "node:path";
 import { onTestFinished } from "vitest";
@@ -22,8 +22,18 @@ export interface Started {
   readonly ended: Promise<Ended>;
 }
 
-export function start(...args: readonly string[]): Started {
-  const child = spawn(process.execPath, [BINARY, ...args], { stdio: ["ignore", "pipe", "pipe"] });
+export const start = (...args: readonly string[]): Started => startAt(BINARY, args);
+
+/** The built tool as it is now, in a folder: a build during a long test does not change it. Its binary. */
+export function frozenBinary(folder: string): string {
+  cpSync(join(ROOT, "dist"), join(folder, "dist"), { recursive: true });
+  cpSync(join(ROOT, "package.json"), join(folder, "package.json"));
+  symlinkSync(join(ROOT, "node_modules"), join(folder, "node_modules"));
+  return join(folder, "dist/bin/fairlead.js");
+}
+
+export function startAt(binary: string, args: readonly string[]): Started {
+  const child = spawn(process.execPath, [binary, ...args], { stdio: ["ignore", "pipe", "pipe"] });
   let [out, err] = ["", ""];
   child.stdout.setEncoding("utf8").on("data", (text: string) => {
     out += text;
@@ -35,6 +45,14 @@ export function start(...args: readonly string[]): Started {
     child.on("close", (status, signal) => done({ status, signal, out, err }));
   });
   return { child, err: () => err, ended };
+}
+
+/** Until standard error shows it; throws when the process ends without. */
+export async function until(started: Started, shown: RegExp): Promise<void> {
+  while (!shown.test(started.err())) {
+    if (started.child.exitCode !== null) throw new Error(`ended without ${shown}: ${started.err()}`);
+    await new Promise((wait) => setTimeout(wait, 20));
+  }
 }
 
 export const fairlead = (...args: readonly string[]): Promise<Ended> => start(...args).ended;

@@ -21,7 +21,7 @@ import type { Stage } from "../stage.js";
 /** Analytic metrics of the fitted model to start from, the first that there is. */
 const STARTS = ["metric-constant.json", "metric-riccati.json"];
 const HARD_STATES = 30;
-const WARM_SHARE = 0.25;
+const [WARM_STEPS, WARM_ROUNDS] = [0.32, 0.4];
 /** Boxes that a proof may examine while the metric is still being learned. */
 const PROOF_BOXES = 40_000;
 /** 1/s: where training starts when no analytic metric gives a rate. */
@@ -60,7 +60,7 @@ export const metricStage: Stage = {
         goalVector: goalVector(question.goal, model.n, model.rotation),
         features: featuresOf(plant, plant.settings.metricDependsOn),
         ...(parent === null ? metricNet : warm(metricNet)),
-        initialRate: first.rate ?? FIRST_RATE,
+        initialRate: first.rate ?? (first.worstRate > 0 ? first.worstRate : FIRST_RATE),
         start: start.metric,
       },
       {
@@ -88,7 +88,7 @@ export const metricStage: Stage = {
 
 /** From a metric of an earlier run a share of the steps is enough. */
 function warm({ width, steps, rounds }: PlantSettings["metricNet"]): PlantSettings["metricNet"] {
-  return { width, steps: Math.ceil(WARM_SHARE * steps), rounds: Math.ceil(WARM_SHARE * rounds) };
+  return { width, steps: Math.ceil(WARM_STEPS * steps), rounds: Math.ceil(WARM_ROUNDS * rounds) };
 }
 
 /** States of the boxes that stop the proof of a metric's tube; null when it closes, empty when there is no tube. */
