@@ -1,8 +1,9 @@
 /**
- * A table into runs: units to SI, runs by label, pieces at gaps and at bad stamps, angles unwrapped within a piece.
+ * A table into runs: units to SI, runs by label, pieces at gaps and at bad stamps, headings unwrapped within a piece.
  * Nothing is dropped or doubted silently: every fault is a finding.
  */
 import type { Plant } from "../plant/plant.js";
+import { activeStates } from "../plant/scaling.js";
 import type { LogTable } from "./logTable.js";
 import type { Piece, Run } from "./recording.js";
 
@@ -133,12 +134,15 @@ function toPiece(
     states: new Float64Array(rows.length * n),
     inputs: new Float64Array(rows.length * m),
   };
+  const bounded = activeStates(plant);
   for (let i = 0; i < n; i++) {
     const { factor } = logs.states[i]!.unit;
+    // an angle with an envelope does not go round: unwrapping it would hide a wrong unit
+    const goesRound = plant.states[i]!.isAngle && !bounded.includes(i);
     let turns = 0;
     for (const [k, row] of rows.entries()) {
       const value = states[i]![row]! * factor;
-      if (plant.states[i]!.isAngle && k > 0) {
+      if (goesRound && k > 0) {
         const step = value + turns - out.states[(k - 1) * n + i]!;
         turns -= 2 * Math.PI * Math.round(step / (2 * Math.PI));
       }

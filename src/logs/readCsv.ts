@@ -5,7 +5,11 @@ import { LogError } from "./logError.js";
 import { type LogTable, requireColumns, type WantedColumns } from "./logTable.js";
 
 export async function readCsv(file: string, wanted: WantedColumns): Promise<LogTable> {
-  const parser = createReadStream(file).pipe(parse({ bom: true, trim: true, skip_empty_lines: true, info: true }));
+  const parser = parse({ bom: true, trim: true, skip_empty_lines: true, info: true });
+  const source = createReadStream(file);
+  // pipe() does not hand over errors: without this a file that is not there would be waited for without end
+  source.on("error", (error) => parser.destroy(error));
+  source.pipe(parser);
   let header: string[] | null = null;
   let at: number[] = [];
   let runAt = -1;

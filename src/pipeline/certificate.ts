@@ -95,18 +95,19 @@ export function certificateFile(name: string, note: string, certificate: Certifi
       tube,
       counted,
       allowance,
-      proof: proof === null ? null : proofFile(proof),
+      proof: proof === null ? null : proofFile(proof, Number.isFinite(survey.worst.rate)),
     },
   };
 }
 
-function proofFile(proof: ProofResult): ProofFile {
+/** Where every state is actuated any rate holds: the claimed one is what is said to be proved. */
+function proofFile(proof: ProofResult, isRateBounded: boolean): ProofFile {
   const { status, provedRate, provedShare, refutedShare, openShare, boxes, leaves, refuted, claims } = proof;
   const names = ["rate", "push", "spread", "authority", "definite"];
   const counts = names.map((name, i) => ({ name, count: leaves.claim.filter((claim) => claim === i + 1).length }));
   return {
     status,
-    provedRate,
+    provedRate: isRateBounded || provedRate === null ? provedRate : claims.rate,
     provedShare,
     refutedShare,
     openShare,

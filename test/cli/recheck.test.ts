@@ -3,8 +3,13 @@ import { cpSync, readFileSync, rmSync, writeFileSync } from "node:fs";
 import { join } from "node:path";
 import { afterAll, beforeAll, describe, expect, it } from "vitest";
 import { readSavedTable, type SavedColumn, writeTable } from "../../src/logs/savedTable.js";
+import type { ResidualFile } from "../../src/model/controlAffine.js";
+import type { DualMetricFile } from "../../src/nets/dualMetric.js";
 import { FILES } from "../../src/pipeline/artifacts.js";
-import { fairlead, plantFile, quickRover, scratch, start, temporaryFolder, until } from "./binary.js";
+import { boxesColumns } from "../../src/pipeline/boxesTable.js";
+import type { CertifiedTube } from "../../src/pipeline/certifyMetric.js";
+import { readPlant } from "../../src/plant/readPlant.js";
+import { fairlead, plantFile, quickRover, ROOT, scratch, start, temporaryFolder, until } from "./binary.js";
 import { readJson } from "./runFiles.js";
 
 const top = temporaryFolder();
@@ -77,6 +82,33 @@ const tube = (folder: string, change: (tube: Tube) => void): void =>
   json<Learned[]>(folder, FILES.certificates, (list) => change(learnedOf(list).evidence.tube));
 const summary = (folder: string, change: (learned: Learned) => void): void =>
   json<{ certificates: Learned[] }>(folder, FILES.summary, ({ certificates }) => change(learnedOf(certificates)));
+
+describe("a proof", () => {
+  it("has the same boxes for any number of workers: those of the run", async () => {
+    const built = <T>(path: string): Promise<T> => import(join(ROOT, "dist/src", path)) as Promise<T>;
+    const { proveClaims, tubeClaims } =
+      await built<typeof import("../../src/pipeline/proveTube.js")>("pipeline/proveTube.js");
+    const plan = readPlant(readFileSync(join(run, FILES.plant), "utf8"), join(top, "plant.yaml"));
+    if (!plan.ok) throw new Error("the copy of the plant file does not read");
+    const made = readJson<{ metric: DualMetricFile }>(run, FILES.learned);
+    const residual = readJson<ResidualFile>(run, FILES.residual);
+    const { bounds } = readJson<{ bounds: { fitted: number[] } }>(run, FILES.disturbance);
+    const { evidence } = learnedOf(readJson<Learned[]>(run, FILES.certificates));
+    const claims = tubeClaims(evidence.tube as unknown as CertifiedTube, bounds.fitted);
+    const { signal } = new AbortController();
+    for (const workers of [1, 2, 3]) {
+      const proof = await proveClaims({ plant: plan.plant, residual, metric: made.metric }, claims, {
+        workers,
+        progress: () => undefined,
+        signal,
+      });
+      expect(proof.status).toBe("proved");
+      const path = join(top, `boxes-${workers}.arrow`);
+      writeTable(path, boxesColumns(plan.plant, proof.leaves), {});
+      expect(readFileSync(path).equals(readFileSync(join(run, FILES.boxes))), `${workers} workers`).toBe(true);
+    }
+  });
+});
 
 describe("recheck", () => {
   it("passes on the run as made, and on a copy elsewhere", async () => {

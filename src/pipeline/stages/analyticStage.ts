@@ -89,7 +89,7 @@ function bestConstant(plant: Plant, model: ControlAffineModel, bounds: Bounds): 
 }
 
 function bestRiccati(plant: Plant, model: ControlAffineModel, bounds: Bounds): MetricArtifact {
-  const designs = riccatiAtTrim(model, inputCorners(model.m), bounds.wbar);
+  const designs = riccatiAtTrim(model);
   if (designs.length === 0) {
     return { status: "absent", reason: "the Riccati equation has no stabilising solution at the trim point" };
   }
@@ -106,7 +106,7 @@ function bestRiccati(plant: Plant, model: ControlAffineModel, bounds: Bounds): M
   return {
     status: "found",
     metric: best.metric,
-    note: `shifted by ${best.design.shift.toPrecision(3)} 1/s, the best of ${judged.length} designs`,
+    note: `prescribed stability ${best.design.shift.toPrecision(3)} 1/s, the best of ${judged.length} designs`,
   };
 }
 

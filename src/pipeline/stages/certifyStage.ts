@@ -29,15 +29,17 @@ export const certifyStage: Stage = {
   makes: [FILES.certificates, FILES.violations, FILES.boxes, FILES.certificatePictures],
   learns: false,
   run: async (context) => {
-    const { folder, plant, seed, progress, signal, workers } = context;
+    const { folder, plant, seed, progress, signal, workers, parent } = context;
+    // what the prior alone can do has been seen in the earlier run
+    const kinds = CERTIFICATE_KINDS.filter(({ model }) => parent === null || model === "fitted");
     const files: CertificateFile[] = [];
     const pictures: CertificatePicture[] = [];
     const violations: Violation[] = [];
     let boxes: LeafTable | null = null;
-    for (const [done, kind] of CERTIFICATE_KINDS.entries()) {
+    for (const [done, kind] of kinds.entries()) {
       signal.throwIfAborted();
       const report = (share: number, note: string): void =>
-        progress("certify", done + share, CERTIFICATE_KINDS.length, `${kind.title}: ${note}`);
+        progress("certify", done + share, kinds.length, `${kind.title}: ${note}`);
       report(0, "sampled and counted");
       await new Promise((resolve) => setImmediate(resolve));
       const made = folder.readJson<MetricArtifact>(kind.file);

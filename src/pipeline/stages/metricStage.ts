@@ -21,7 +21,7 @@ import type { Stage } from "../stage.js";
 /** Analytic metrics of the fitted model to start from, the first that there is. */
 const STARTS = ["metric-constant.json", "metric-riccati.json"];
 const HARD_STATES = 30;
-const [WARM_STEPS, WARM_ROUNDS] = [0.32, 0.4];
+const [WARM_STEPS, WARM_ROUNDS] = [0.2, 0.3];
 /** Boxes that a proof may examine while the metric is still being learned. */
 const PROOF_BOXES = 40_000;
 /** 1/s: where training starts when no analytic metric gives a rate. */
