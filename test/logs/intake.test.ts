@@ -254,7 +254,7 @@ describe("runs as later stages use them", () => {
     expect(support.distance(Float64Array.of(0, 0, -0.5))).toBeLessThan(0.051);
     expect(support.distance(Float64Array.of(0, 0, 0.9))).toBe(Number.POSITIVE_INFINITY);
     expect(support.unsupportedShare).toBeCloseTo((1 - support.radius) / 2, 2);
-    const [, speed] = coverageOf(plantFor(["slow.csv"]), runs);
+    const [speed] = coverageOf(plantFor(["slow.csv"]), runs);
     expect(speed!.counts.reduce((a, b) => a + b)).toBe(60);
     expect(speed!.counts.slice(13).every((count) => count === 0)).toBe(true);
   });
