@@ -2,17 +2,7 @@
  * One data set as an Arrow IPC file: float32 columns with their unit in the field's metadata, a row a sample, a run
  * after the other.
  */
-import {
-  Field,
-  Float32,
-  Int16,
-  makeData,
-  RecordBatch,
-  Schema,
-  Struct,
-  Table,
-  tableToIPC,
-} from "apache-arrow";
+import { Field, Float32, Int16, makeData, RecordBatch, Schema, Struct, Table, tableToIPC } from "apache-arrow";
 import { seededRandom } from "../../src/num/random.js";
 import type { DataSet } from "./dataSets.js";
 import { simulateRun } from "./simulate.js";

@@ -23,7 +23,9 @@ export function coverageOf(plant: Plant, runs: readonly Run[]): StateCoverage[] 
     for (const run of runs) {
       for (const piece of run.pieces) {
         for (let at = i; at < piece.states.length; at += n) {
-          const bin = Math.floor((BINS * (piece.states[at]! - min)) / (max - min));
+          const value = piece.states[at]!;
+          // the last bin holds its upper edge: a value on the envelope's face is inside it
+          const bin = value === max ? BINS - 1 : Math.floor((BINS * (value - min)) / (max - min));
           if (bin < 0 || bin >= BINS) outside++;
           else counts[bin]!++;
         }

@@ -2,7 +2,7 @@
 import { readFile } from "node:fs/promises";
 import { DataType, type Table, tableFromIPC, type Vector } from "apache-arrow";
 import { LogError } from "./logError.js";
-import { type LogTable, requireColumns, type WantedColumns } from "./logTable.js";
+import { type LogTable, requireColumns, runLabel, type WantedColumns } from "./logTable.js";
 
 export async function readArrow(file: string, wanted: WantedColumns): Promise<LogTable> {
   let table: Table;
@@ -26,7 +26,7 @@ export async function readArrow(file: string, wanted: WantedColumns): Promise<Lo
     file,
     rows,
     columns: new Map(wanted.numbers.map((name) => [name, numbers(file, name, table.getChild(name)!, rows)])),
-    runs: wanted.run === null ? null : labels(table.getChild(wanted.run)!, rows),
+    runs: wanted.run === null ? null : labels(file, wanted.run, table.getChild(wanted.run)!, rows),
   };
 }
 
@@ -43,6 +43,6 @@ function numbers(file: string, name: string, vector: Vector, rows: number): Floa
   return out;
 }
 
-function labels(vector: Vector, rows: number): string[] {
-  return Array.from({ length: rows }, (_, k) => String(vector.get(k)));
+function labels(file: string, name: string, vector: Vector, rows: number): string[] {
+  return Array.from({ length: rows }, (_, k) => runLabel(file, k + 1, name, String(vector.get(k) ?? "")));
 }

@@ -2,7 +2,7 @@
 import { createReadStream } from "node:fs";
 import { CsvError, parse } from "csv-parse";
 import { LogError } from "./logError.js";
-import { type LogTable, requireColumns, type WantedColumns } from "./logTable.js";
+import { type LogTable, requireColumns, runLabel, type WantedColumns } from "./logTable.js";
 
 export async function readCsv(file: string, wanted: WantedColumns): Promise<LogTable> {
   const parser = parse({ bom: true, trim: true, skip_empty_lines: true, info: true });
@@ -29,7 +29,7 @@ export async function readCsv(file: string, wanted: WantedColumns): Promise<LogT
       rows++;
       for (const [c, index] of at.entries())
         values[c]!.push(numberIn(file, info.lines, wanted.numbers[c]!, record[index]!));
-      if (runAt >= 0) runs.push(shared(known, record[runAt]!));
+      if (runAt >= 0) runs.push(shared(known, runLabel(file, info.lines, wanted.run!, record[runAt]!)));
     }
   } catch (error) {
     if (error instanceof LogError) throw error;

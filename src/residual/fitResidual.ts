@@ -245,7 +245,9 @@ function termNetworks(
   };
   return {
     loss,
-    variables: terms.flatMap(({ net }) => (fittedLayers === null ? net.variables : net.variables.slice(-2 * fittedLayers))),
+    variables: terms.flatMap(({ net }) =>
+      fittedLayers === null ? net.variables : net.variables.slice(-2 * fittedLayers),
+    ),
     toFile: (): ResidualFile => ({
       terms: unknowns.map(({ state, input }, j) => {
         const { features, net, outputScale } = terms[j]!;
