@@ -9,6 +9,7 @@ import type { MarginGoal, Plant } from "../plant/plant.js";
 import { type CertificateExtremes, chooseRate, type RateChoice, type TradeOffPoint } from "../tube/chooseRate.js";
 import { tubeRadius } from "../tube/tube.js";
 import { type CountedEvidence, countFailures } from "../verify/counted.js";
+import { batchRates } from "../verify/kernel/batchRates.js";
 import { aloneIn } from "../verify/proof/claims.js";
 import { type MarginDirection, spread } from "../verify/spread.js";
 import { type Survey, survey } from "../verify/survey.js";
@@ -69,7 +70,7 @@ export function certifyMetric(
   allowance: number,
   random: Random,
 ): Certification {
-  const seen = survey(model, dualMetric(file), SURVEY);
+  const seen = survey(model, dualMetric(file), SURVEY, batchRates(model, file));
   const extremes = sampledExtremes(model, seen, question, allowance);
   const choice = chooseRate(extremes, question);
   if (choice.status !== "chosen") return { survey: seen, choice, tube: null, counted: null };

@@ -3,6 +3,7 @@ import type { ControlAffineModel } from "../model/controlAffine.js";
 import type { DualMetricFile } from "../nets/dualMetric.js";
 import { dualMetric } from "../nets/dualMetric.js";
 import { chooseRate } from "../tube/chooseRate.js";
+import { batchRates } from "../verify/kernel/batchRates.js";
 import { type Survey, survey } from "../verify/survey.js";
 import { goalDirection, SAMPLED_ALLOWANCE, sampledExtremes, type TubeQuestion } from "./certifyMetric.js";
 
@@ -21,7 +22,7 @@ export const AUTHORITY_SHARE = 0.97;
 const QUICK = { points: 1024, starts: 4 };
 
 export function judgeMetric(model: ControlAffineModel, file: DualMetricFile, question: TubeQuestion): QuickJudgement {
-  const seen = survey(model, dualMetric(file), QUICK);
+  const seen = survey(model, dualMetric(file), QUICK, batchRates(model, file));
   const choice = chooseRate(sampledExtremes(model, seen, question, SAMPLED_ALLOWANCE), question);
   const point = choice.status === "chosen" ? choice.point : null;
   return { margin: point?.margin ?? null, rate: point?.rate ?? null, worstRate: seen.worst.rate, seen };

@@ -26,12 +26,20 @@ export function largest(evaluate: (at: Float64Array) => number, options: ScanOpt
 
 /** The `starts` largest values among the scan points, largest first. */
 export function scan(evaluate: (at: Float64Array) => number, options: ScanOptions): Extreme[] {
-  const { dimension: d, points, starts } = options;
+  return ranked(valuesAt(evaluate, options), options);
+}
+
+/** A value a scan point. */
+export function valuesAt(evaluate: (at: Float64Array) => number, { dimension: d, points }: ScanOptions): Float64Array {
   const count = d === 0 ? 1 : points.length / d;
+  return Float64Array.from({ length: count }, (_, i) => evaluate(points.subarray(i * d, (i + 1) * d)));
+}
+
+/** The `starts` largest of the values at the scan points, largest first. */
+export function ranked(values: Float64Array, { dimension: d, points, starts }: ScanOptions): Extreme[] {
   const best: Extreme[] = [];
-  for (let i = 0; i < count; i++) {
+  for (const [i, value] of values.entries()) {
     const at = points.subarray(i * d, (i + 1) * d);
-    const value = evaluate(at);
     if (best.length < starts || value > best.at(-1)!.value) {
       const place = best.findIndex((other) => value > other.value);
       best.splice(place < 0 ? best.length : place, 0, { value, at: at.slice() });

@@ -5,7 +5,8 @@
 import type { ControlAffineModel } from "../model/controlAffine.js";
 import type { DualMetric } from "../nets/dualMetric.js";
 import { type Condition, condition } from "./condition.js";
-import { type Extreme, largest, refined, type ScanOptions, scan } from "./extreme.js";
+import { type Extreme, largest, ranked, refined, type ScanOptions, scan, valuesAt } from "./extreme.js";
+import type { BatchRates } from "./kernel/batchRates.js";
 import { scanPoints } from "./scanPoints.js";
 import { type MarginDirection, spread } from "./spread.js";
 
@@ -36,7 +37,13 @@ export interface SurveyOptions {
 
 const TOLERANCE = 1e-5;
 
-export function survey(model: ControlAffineModel, metric: DualMetric, { points, starts }: SurveyOptions): Survey {
+/** batch: rates of many points at once, where there is such a kernel; else each is evaluated by itself. */
+export function survey(
+  model: ControlAffineModel,
+  metric: DualMetric,
+  { points, starts }: SurveyOptions,
+  batch: BatchRates | null = null,
+): Survey {
   const here = condition(model, metric);
   const dimension = model.active.length;
   const full: ScanOptions = { dimension, points: scanPoints(dimension, points), starts, tolerance: TOLERANCE };
@@ -52,7 +59,8 @@ export function survey(model: ControlAffineModel, metric: DualMetric, { points, 
       here.moveTo(active) ? value() : Number.POSITIVE_INFINITY;
 
   const negativeRate = at(() => -here.rate().rate);
-  const slowest = scan(negativeRate, full);
+  const scanned = batch === null ? valuesAt(negativeRate, full) : batch(full.points).map((rate) => -rate);
+  const slowest = ranked(scanned, full);
   const slow = refined(negativeRate, slowest, full);
   /** The gain grows without end towards the slowest states: they are searched from as well. */
   const densest = (density: (active: Float64Array) => number): Extreme => {
@@ -69,7 +77,7 @@ export function survey(model: ControlAffineModel, metric: DualMetric, { points, 
     condition: here,
     worst: surveyed(slow.at),
     violations: (rate, most) =>
-      scan(negativeRate, { ...full, starts: most })
+      ranked(scanned, { ...full, starts: most })
         .filter((state) => -state.value < rate)
         .map((state) => surveyed(state.at)),
     sigma: (wbar) =>
