@@ -15,13 +15,13 @@ export async function readArrow(file: string, wanted: WantedColumns): Promise<Lo
       : `is not a whole Arrow IPC file or stream (${String((error as Error).message).split("\n")[0]})`;
     throw new LogError(file, null, `${reason}; logs.files of the plant file names the logs, relative to it`);
   }
+  const rows = table.numRows;
+  if (rows === 0) throw new LogError(file, null, "holds no rows (empty, or cut off before the first record batch)");
   requireColumns(
     file,
     table.schema.fields.map((field) => field.name),
     wanted,
   );
-  const rows = table.numRows;
-  if (rows === 0) throw new LogError(file, null, "holds no rows (empty, or cut off before the first record batch)");
   return {
     file,
     rows,

@@ -34,7 +34,8 @@ export function writeTable(
   const schema = new Schema(fields, new Map(Object.entries(facts)));
   const children = columns.map(({ values }) =>
     values instanceof Float64Array
-      ? makeData({ type: new Float64(), data: values })
+      ? // a copy: columns that share one array would be written in a way that does not read back
+        makeData({ type: new Float64(), data: values.slice() })
       : (vectorFromArray([...values], new Utf8()).data[0] ?? makeData({ type: new Utf8() })),
   );
   const length = columns[0]?.values.length ?? 0;

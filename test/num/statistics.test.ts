@@ -21,15 +21,17 @@ describe("Clopper-Pearson limits", () => {
     expect(clopperPearsonUpper(10, 10, 0.975)).toBe(1);
     expect(clopperPearsonUpper(0, 10, 0.975)).toBeCloseTo(0.3084971, 7);
   });
-  // common acceptance-sampling practice: trials without a failure for a share at one-sided 95 %
+  // common acceptance-sampling practice: trials without a failure for a share, one-sided
   it.each([
-    [0.05, 59],
-    [0.01, 299],
-    [0.001, 2995],
-    [0.0001, 29956],
-  ])("share %d needs %i trials without a failure", (share, trials) => {
-    expect(clopperPearsonUpper(0, trials, 0.95)).toBeLessThanOrEqual(share);
-    expect(clopperPearsonUpper(0, trials - 1, 0.95)).toBeGreaterThan(share);
+    [0.05, 59, 0.95],
+    [0.01, 299, 0.95],
+    [0.001, 2995, 0.95],
+    [0.0001, 29956, 0.95],
+    [0.01, 1375, 1 - 1e-6],
+    [0.001, 13809, 1 - 1e-6],
+  ])("share %d needs %i trials without a failure at %d", (share, trials, confidence) => {
+    expect(clopperPearsonUpper(0, trials, confidence)).toBeLessThanOrEqual(share);
+    expect(clopperPearsonUpper(0, trials - 1, confidence)).toBeGreaterThan(share);
   });
   it("covers a known share at least as often as it says", () => {
     const random = seededRandom(11);
@@ -56,6 +58,16 @@ describe("split conformal rank", () => {
       expect(conformalRank(needed - 1, alpha)).toBeNull();
     }
   });
+  it("is not moved by rounding: against whole numbers for every count to 400 and whole percent", () => {
+    for (let percent = 1; percent < 100; percent++) {
+      for (let count = 1; count <= 400; count++) {
+        const product = (count + 1) * (100 - percent);
+        const rank = (product - (product % 100)) / 100 + (product % 100 === 0 ? 0 : 1);
+        if (conformalRank(count, percent / 100) === (rank <= count ? rank : null)) continue;
+        expect.unreachable(`${count} scores at ${percent} %`);
+      }
+    }
+  });
   it("covers a new score with a share that follows Beta(k, n + 1 - k): n = 100, alpha = 0.1", () => {
     // Vovk, "Conditional validity of inductive conformal predictors", ACML 2012: k = 91, mean .90099, 5 to 95 % .848 to .945
     const random = seededRandom(5);
@@ -68,7 +80,19 @@ describe("split conformal rank", () => {
     const mean = coverages.reduce((sum, value) => sum + value, 0) / repeats;
     const sd = Math.sqrt((91 * 10) / (101 ** 2 * 102));
     expect(Math.abs(mean - 91 / 101)).toBeLessThan((4 * sd) / Math.sqrt(repeats));
-    expect(coverages[Math.round(0.05 * repeats)]).toBeCloseTo(0.848, 2);
-    expect(coverages[Math.round(0.95 * repeats)]).toBeCloseTo(0.945, 2);
+    // the whole law: P(coverage <= c) is the chance of 91 or more of 100 uniforms below c. The largest gap of an empirical
+    // law exceeds sqrt(ln(2 / d) / (2 N)) with a chance of at most d (Massart, Annals of Probability 18, 1990)
+    const law = (c: number): number => {
+      let [term, sum] = [c ** 100, c ** 100];
+      for (let k = 100; k > 91; k--) {
+        term *= (k / (101 - k)) * ((1 - c) / c);
+        sum += term;
+      }
+      return sum;
+    };
+    expect(law(0.848)).toBeCloseTo(0.05, 2);
+    expect(law(0.945)).toBeCloseTo(0.95, 2);
+    const gap = coverages.reduce((worst, c, k) => Math.max(worst, Math.abs((k + 0.5) / repeats - law(c))), 0);
+    expect(gap).toBeLessThan(Math.sqrt(Math.log(2 / 1e-4) / (2 * repeats)));
   });
 });

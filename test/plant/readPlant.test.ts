@@ -32,6 +32,7 @@ describe("the rover example", () => {
       unsupported: "refuse",
       goal: { kind: "planar" },
       authorityLimit: 0.4,
+      roomLimit: 0.5,
       initialDistance: 0,
       rate: null,
       metricDependsOn: [3],

@@ -19,12 +19,14 @@ describe(`${KILLS} kills at random moments, seed ${SEED}`, () => {
     const plant = plantFile(top, quickRover());
     const [whole, killed] = [join(top, "whole"), join(top, "killed")];
     expect((await startAt(binary, ["run", plant, "--out", whole, "--quiet"]).ended).status).toBe(0);
-    const wholeSeconds = (performance.now() - from) / 1000;
+    // of a job in one go; the shortest so far, for other load on the machine makes a job longer
+    let wholeSeconds = (performance.now() - from) / 1000;
     const random = seededRandom(SEED).stream("kill");
     const kills: { moment: number; kept: number; parts: number }[] = [];
     let [jobs, kept] = [0, 0];
     while (kills.length < KILLS) {
       const moment = Math.round(1000 * wholeSeconds * random.uniform());
+      const started = performance.now();
       const run = startAt(binary, ["run", plant, "--out", killed]);
       const timer = setTimeout(() => run.child.kill("SIGKILL"), moment);
       const { signal, status, err } = await run.ended;
@@ -38,6 +40,7 @@ describe(`${KILLS} kills at random moments, seed ${SEED}`, () => {
         continue;
       }
       expect(status, err).toBe(0);
+      if (keptNow === 0) wholeSeconds = Math.min(wholeSeconds, (performance.now() - started) / 1000);
       expect(parts).toBe(0);
       expect(bytesOf(killed)).toEqual(bytesOf(whole));
       rmSync(killed, { recursive: true });
