@@ -10,11 +10,11 @@ import { disturbanceTable } from "./disturbanceTable.js";
 import { figures } from "./figure.js";
 import { duration, plural } from "./format.js";
 import { marginBars } from "./marginBars.js";
-import { Markup, markup } from "./markup.js";
+import { type Markup, markup } from "./markup.js";
+import { list, page, section } from "./page.js";
 import { rateMaps } from "./rateMap.js";
 import { residualFigures } from "./residualCurves.js";
 import { scores } from "./scores.js";
-import { STYLE } from "./theme.js";
 import { tradeOff } from "./tradeOff.js";
 import { trainingHistory } from "./trainingHistory.js";
 import { tubeDrawing } from "./tubeDrawing.js";
@@ -24,7 +24,7 @@ import { verdictSection } from "./verdict.js";
  * The whole page; equal results give equal bytes. Throws when a certificate that holds lacks the asked margin.
  */
 export async function renderReport(summary: Summary, pictures: Pictures): Promise<string> {
-  return page(summary, [
+  const sections = [
     section("comparison", "Learned against analytic", [
       comparisonTable(summary),
       figures([...(summary.certificates.length > 0 ? [await marginBars(summary)] : []), evidenceWords()]),
@@ -46,36 +46,14 @@ export async function renderReport(summary: Summary, pictures: Pictures): Promis
     section("assumptions", "Assumptions", [list(summary.assumptions, "No assumption was recorded.")]),
     section("cautions", "Cautions", [list([...summary.cautions, STANDARDS_CAUTION], "")]),
     section("repeat", "How to repeat it", [repeat(summary)]),
-  ]);
-}
-
-function page(summary: Summary, sections: readonly Markup[]): string {
-  return markup`<!DOCTYPE html>
-<html lang="en">
-<head>
-<meta charset="utf-8"/>
-<meta name="viewport" content="width=device-width, initial-scale=1"/>
-<title>Tracking margin of ${summary.plant}</title>
-<style>${new Markup(STYLE)}</style>
-</head>
-<body>
-<header><h1>Tracking margin of ${summary.plant}</h1><p>${summary.description}</p></header>
-<main>
-${verdictSection(summary)}
-${sections}
-</main>
-<footer>Made by Fairlead from the saved results of one run. The numbers are those of summary.json beside this file.</footer>
-</body>
-</html>
-`.text;
-}
-
-function section(id: string, title: string, content: readonly Markup[]): Markup {
-  return markup`<section aria-labelledby="${id}">
-<h2 id="${id}">${title}</h2>
-${content}
-</section>
-`;
+  ];
+  return page({
+    title: `Tracking margin of ${summary.plant}`,
+    description: summary.description,
+    main: [verdictSection(summary), ...sections],
+    footer:
+      "Made by Fairlead from the saved results of one run. The numbers are those of summary.json beside this file.",
+  });
 }
 
 function evidenceWords(): Markup {
@@ -87,12 +65,6 @@ function evidenceWords(): Markup {
 
 function logWords({ coverage: { runs, findings } }: Pictures): Markup {
   return markup`<p>${plural(runs.fit, "run")} for the fit, ${runs.calibration} for the calibration of the bound, ${runs.test} for the test. The split is by run.</p>${findings.length === 0 ? null : list(findings, "")}`;
-}
-
-function list(items: readonly string[], empty: string): Markup {
-  return items.length === 0
-    ? markup`<p class="note">${empty}</p>`
-    : markup`<ul>${items.map((item) => markup`<li>${item}</li>`)}</ul>`;
 }
 
 function repeat({ seed, engine, seconds }: Summary): Markup {

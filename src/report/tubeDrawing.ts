@@ -8,7 +8,8 @@ import { askedMargin, holding } from "./certificateWords.js";
 import { positionUnit } from "./comparisonTable.js";
 import { certificateLegend, figure, legend } from "./figure.js";
 import { niceStep, number, quantity } from "./format.js";
-import { Markup, markup } from "./markup.js";
+import { type Markup, markup } from "./markup.js";
+import { type Point, pixel, polyline } from "./svgPath.js";
 import { CHART_WIDTH, certificateStyle } from "./theme.js";
 
 const PATH_POINTS = 121;
@@ -138,7 +139,6 @@ function widestFirst(tubes: Tube[]): Tube[] {
   return tubes.sort((a, b) => b.half - a.half);
 }
 
-type Point = readonly [number, number];
 interface PathPoint {
   readonly x: number;
   readonly y: number;
@@ -170,12 +170,4 @@ function ellipse([xx, xy, yy]: readonly [number, number, number], heading: numbe
     const across = l21 * c + l22 * s;
     return [cos * along - sin * across, sin * along + cos * across];
   });
-}
-
-function pixel(value: number): string {
-  return String(Math.round(100 * value) / 100);
-}
-
-function polyline(points: readonly Point[]): Markup {
-  return new Markup(`M${points.map(([x, y]) => `${pixel(x)} ${pixel(y)}`).join("L")}`);
 }
