@@ -3,7 +3,7 @@ import { availableParallelism, totalmem } from "node:os";
 import { openEngine } from "../engine/openEngine.js";
 import { selfCheck } from "../pipeline/selfCheck.js";
 import { FAIRLEAD_VERSION } from "../pipeline/version.js";
-import type { ExitStatus, Streams } from "./main.js";
+import type { ExitStatus, Streams } from "./contract.js";
 
 export async function doctor(options: { json: boolean }, streams: Streams): Promise<ExitStatus> {
   const engine = await openEngine();

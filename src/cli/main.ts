@@ -8,16 +8,10 @@ import { LogError } from "../logs/logError.js";
 import { STAGES } from "../pipeline/job.js";
 import { RunFolderError } from "../pipeline/runFolder.js";
 import { FAIRLEAD_VERSION } from "../pipeline/version.js";
+import type { ExitStatus, RefitOptions, RunOptions, Streams } from "./contract.js";
 import { doctor } from "./doctor.js";
 import { InputError } from "./inputError.js";
 import { lineageCommand, pathCommand, recheckCommand, refitCommand, runCommand, stageCommand } from "./runCommand.js";
-
-export type ExitStatus = 0 | 1 | 2 | 3;
-
-export interface Streams {
-  readonly out: NodeJS.WriteStream;
-  readonly err: NodeJS.WriteStream;
-}
 
 export async function main(
   args: readonly string[],
@@ -121,15 +115,6 @@ function describe(streams: Streams, signal: AbortSignal, finish: (status: ExitSt
     .action(async (options: { json: boolean }) => finish(await doctor(options, streams)));
   for (const command of program.commands) command.exitOverride().copyInheritedSettings(program);
   return program;
-}
-
-type RefitOptions = RunOptions & { readonly logs: readonly string[]; readonly always: boolean };
-
-export interface RunOptions {
-  readonly out: string;
-  readonly json: boolean;
-  readonly quiet: boolean;
-  readonly seed?: number;
 }
 
 function wholeNumber(text: string): number {

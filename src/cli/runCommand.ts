@@ -14,8 +14,8 @@ import { codeHash } from "../pipeline/version.js";
 import type { Plant } from "../plant/plant.js";
 import { formatProblems, readPlant } from "../plant/readPlant.js";
 import { summaryTable } from "../report/summaryTable.js";
+import type { ExitStatus, RefitOptions, RunOptions, Streams } from "./contract.js";
 import { InputError } from "./inputError.js";
-import type { ExitStatus, RunOptions, Streams } from "./main.js";
 import { silentProgress, terminalProgress } from "./progress.js";
 
 interface LoadedPlant {
@@ -49,7 +49,7 @@ export async function runCommand(
 /** `fairlead refit DIR --logs NEW... --out DIR2`. */
 export async function refitCommand(
   dir: string,
-  options: RunOptions & { readonly logs: readonly string[]; readonly always: boolean },
+  options: RefitOptions,
   streams: Streams,
   signal: AbortSignal,
 ): Promise<ExitStatus> {

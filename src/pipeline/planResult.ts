@@ -1,4 +1,5 @@
 /** A tube along a plan in the plant's units and in words, beside the certificate's fixed tube. */
+
 import type { Plan } from "../logs/readPlan.js";
 import type { ControlAffineModel } from "../model/controlAffine.js";
 import type { Plant } from "../plant/plant.js";
@@ -11,21 +12,8 @@ import type { PlanTube } from "../tube/planTube.js";
 import { goalState, halfRange } from "./certificatePicture.js";
 import type { CertifiedTube } from "./certifyMetric.js";
 import type { PlanCells } from "./planCells.js";
+import type { PlanContext } from "./planContext.js";
 import { assumptionsOf, endOf, fixedMisfit, lawWords, verdictWords } from "./planWords.js";
-
-export interface PlanContext {
-  readonly plant: Plant;
-  readonly model: ControlAffineModel;
-  readonly plan: Plan;
-  readonly motion: PlanMotion;
-  readonly tube: CertifiedTube;
-  /** Whether the fixed tube holds all over the envelope. */
-  readonly fixedHolds: boolean;
-  /** The law's, 1/s: the tube's own or one for this plan. */
-  readonly rate: number;
-  readonly window: number;
-  readonly cells: PlanCells;
-}
 
 /** The margins of a tube, in its own order. */
 export function marginNames(plant: Plant, { spreads }: CertifiedTube): (NamedUnit & { readonly half: number })[] {

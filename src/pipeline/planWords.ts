@@ -6,7 +6,7 @@ import type { PlanMargin, PlanSummary } from "../report/planArtifacts.js";
 import { shrunk } from "../tube/margins.js";
 import type { PlanProblem } from "../tube/planChecks.js";
 import type { PlanTubeEnd } from "../tube/planTube.js";
-import type { PlanContext } from "./planResult.js";
+import type { PlanContext } from "./planContext.js";
 
 export function verdictWords(
   status: PlanSummary["status"],
