@@ -1,17 +1,12 @@
 /** A tube along a plan in the plant's units and in words, beside the certificate's fixed tube. */
-
-import type { Plan } from "../logs/readPlan.js";
-import type { ControlAffineModel } from "../model/controlAffine.js";
 import type { Plant } from "../plant/plant.js";
 import type { NamedUnit } from "../report/artifacts.js";
 import type { PlanMargin, PlanPicture, PlanRow, PlanSummary, PlanValue } from "../report/planArtifacts.js";
 import { marginOf } from "../tube/margins.js";
 import type { PlanProblem } from "../tube/planChecks.js";
-import type { PlanMotion } from "../tube/planSteps.js";
 import type { PlanTube } from "../tube/planTube.js";
 import { goalState, halfRange } from "./certificatePicture.js";
 import type { CertifiedTube } from "./certifyMetric.js";
-import type { PlanCells } from "./planCells.js";
 import type { PlanContext } from "./planContext.js";
 import { assumptionsOf, endOf, fixedMisfit, lawWords, verdictWords } from "./planWords.js";
 

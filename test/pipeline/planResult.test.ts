@@ -1,7 +1,8 @@
 import { describe, expect, it } from "vitest";
 import { fittedModel } from "../../src/model/fittedModel.js";
 import type { CertifiedTube } from "../../src/pipeline/certifyMetric.js";
-import { marginNames, type PlanContext, planRows } from "../../src/pipeline/planResult.js";
+import type { PlanContext } from "../../src/pipeline/planContext.js";
+import { marginNames, planRows } from "../../src/pipeline/planResult.js";
 import type { PlanTubeStep } from "../../src/tube/planTube.js";
 import { ROVER } from "../plant/examples.js";
 import { plantOf } from "../plant/reading.js";
