@@ -4,6 +4,7 @@
  *   minimise   Omega sigma(W) sqrt(c^T W c),             sigma = max over the states of sum_i wbar_i sqrt(g_i^T W^-1 g_i)
  *   subject to F - rho B B^T <= 0  at every state and input corner
  *              1/2 Omega sigma rho sqrt(eigmax B^T W^-1 B) <= limit
+ *              Omega sigma sqrt(W_ii) <= room limit for the states that plans need room in
  * On sampled states this is convex for a fixed lambda (goalProgram.ts) and lambda is searched (rateSearch.ts). The
  * samples ask for lambda (1 + 1 %) and for 1 % less than the authority limit; where a checker still finds states that
  * fail, they join the samples and the whole is solved again (cuts). One rho serves all states; a checker that takes the
@@ -23,6 +24,9 @@ export interface ConstantMetricRequest {
   readonly authorityLimit: number;
   /** One state, or the position pair for a planar margin (their block's largest eigenvalue). */
   readonly goalStates: readonly number[];
+  /** Share of the half-range of each of `roomStates` that the margins may take from plans. */
+  readonly roomLimit: number;
+  readonly roomStates: readonly number[];
   /** A given rate, 1/s; null: searched. */
   readonly rate: number | null;
   /** Times that cuts may be added. */
@@ -74,12 +78,22 @@ export function constantMetric(
   goalStates.forEach((state, column) => {
     goal[state * goalStates.length + column] = 1;
   });
+  const rooms = request.roomStates.map((state) => Float64Array.from({ length: n }, (_, i) => (i === state ? 1 : 0)));
   const samples = states.map((at) => conditionSample(model, corners, at));
   let near: number | null = null;
   for (let round = 0; ; round++) {
-    const { problem, original } = precondition({ n, m, wbar, goal, samples });
+    const { problem, original } = precondition({ n, m, wbar, goal, rooms, samples });
     const { best, fastest, slowest } = searchRate(problem, { ...request, near });
     const made = { samples: samples.length, cutRounds: round };
+    if (best !== null && !best.isWithinLimit && round < request.rounds) {
+      // what needs least authority on the samples must contract between them before it is called the least
+      const violations = findViolations(metricOf(best, original));
+      if (violations.length > 0) {
+        samples.push(...violations.map((at) => conditionSample(model, corners, at)));
+        near = best.rate;
+        continue;
+      }
+    }
     if (best === null || !best.isWithinLimit) {
       const reason = best === null ? noRate(request, fastest, slowest) : tooMuchAuthority(request, best);
       const leastAuthority = best === null ? null : metricOf(best, original);

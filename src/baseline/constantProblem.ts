@@ -15,6 +15,8 @@ export interface ConstantProblem {
   readonly wbar: Float64Array;
   /** n x k: the goal's directions; the margin is of the worst combination (two of the position pair: planar). */
   readonly goal: Float64Array;
+  /** Directions (n each) in which the tube leaves plans their room: R sqrt(c^T W c) at most a given share. */
+  readonly rooms: readonly Float64Array[];
   readonly samples: readonly ConditionSample[];
 }
 
@@ -28,9 +30,11 @@ export interface ConstantMeasures {
   readonly s: number;
   readonly e: number;
   readonly w: number;
+  /** Largest c^T W c over the directions of `rooms`; 0 without one. */
+  readonly v: number;
 }
 
-export function measure({ n, m, wbar, goal, samples }: ConstantProblem, W: Float64Array): ConstantMeasures {
+export function measure({ n, m, wbar, goal, rooms, samples }: ConstantProblem, W: Float64Array): ConstantMeasures {
   let [s, e] = [0, 0];
   const p = wbar.length;
   for (const { B, G } of samples) {
@@ -44,7 +48,11 @@ export function measure({ n, m, wbar, goal, samples }: ConstantProblem, W: Float
   congruence(W, goal, block, n, k, new Float64Array(n * k));
   const values = new Float64Array(k);
   symmetricEigen(block, k, values, null);
-  return { s, e, w: Math.max(...values) };
+  const v = rooms.reduce((most, c) => {
+    congruence(W, c, block, n, 1, new Float64Array(n));
+    return Math.max(most, block[0]!);
+  }, 0);
+  return { s, e, w: Math.max(...values), v };
 }
 
 /** Omega: steady radius per sigma for the window T (s), T / (1 - e^{-rate T}), 1 / rate for T = 0. */

@@ -8,7 +8,8 @@
  *   J   = sqrt(H y_B) = 1 / (s sqrt e)
  * so that margin = Omega sqrt(w / H) and authority = 1/2 Omega rho / J. Two normalisations of one set of inequalities:
  *   leastAuthority   maximise J   with rho <= 1
- *   leastMargin      maximise H   with w <= 1,  rho <= (2 limit / Omega) J
+ *   leastRoom        maximise H   with v <= 1,  rho <= (2 limit / Omega) J
+ *   leastMargin      maximise H   with w <= 1,  rho <= (2 limit / Omega) J,  v <= (room / Omega)^2 H
  * W and rho bounded by `BOX` times their start keep the centre finite where a plant leaves W free.
  * Source of the geometric-mean cones: Ben-Tal and Nemirovski, "Lectures on Modern Convex Optimization", 2001, section 3.3.
  */
@@ -31,8 +32,10 @@ export interface GoalPrograms {
   start(metric: GainedMetric): GoalPoint;
   /** The least rho s sqrt(e); stops early below `enough`. Null when `from` is not strictly inside. */
   leastAuthority(from: GoalPoint, enough: number): GoalPoint | null;
-  /** The least s sqrt(w) with rho s sqrt(e) <= limit. Null when `from` is not strictly inside. */
-  leastMargin(from: GoalPoint, limit: number): GoalPoint | null;
+  /** The least s sqrt(v) with rho s sqrt(e) <= limit: most room for plans. Null when `from` is not strictly inside. */
+  leastRoom(from: GoalPoint, limit: number): GoalPoint | null;
+  /** The least s sqrt(w) with rho s sqrt(e) <= limit and s sqrt(v) <= room. Null when `from` is not strictly inside. */
+  leastMargin(from: GoalPoint, limit: number, room: number): GoalPoint | null;
 }
 
 const BOX = 1e4;
@@ -103,14 +106,27 @@ export function goalPrograms(problem: ConstantProblem, rate: number): GoalProgra
     return { W, rho: result.x[RHO]!, gap: 1 - (goal === H ? Math.sqrt(share) : share), x: result.x };
   };
 
+  const authorityWithin = (limit: number): Block => smallBlock([0], [J, [limit / scale]], [RHO, [-1]]);
+  /** share * H - c^T W c >= 0. */
+  const spreadWithin = (c: Float64Array, share: number): Block => {
+    const { size, constant, terms } = blocks.spread(c, 1, 0);
+    return { size, constant, terms: [...terms, { variable: H, matrix: Float64Array.of(share) }] };
+  };
+
   return {
     start,
     leastAuthority: (from, enough) =>
       enlarge(from, INSIDE / from.rho, J, scale / enough, [smallBlock([1], [RHO, [-1]])]),
-    leastMargin: (from, limit) =>
+    leastRoom: (from, limit) =>
+      enlarge(from, INSIDE / measure(problem, from.W).v, H, Number.POSITIVE_INFINITY, [
+        ...problem.rooms.map((c) => blocks.spread(c, 1, 1)),
+        authorityWithin(limit),
+      ]),
+    leastMargin: (from, limit, room) =>
       enlarge(from, INSIDE / measure(problem, from.W).w, H, Number.POSITIVE_INFINITY, [
         blocks.spread(problem.goal, problem.goal.length / n, 1),
-        smallBlock([0], [J, [limit / scale]], [RHO, [-1]]),
+        authorityWithin(limit),
+        ...problem.rooms.map((c) => spreadWithin(c, (room / scale) ** 2)),
       ]),
   };
 }

@@ -21,7 +21,7 @@ const SHIFT = 0.05;
 const HALVINGS = 8;
 
 export function precondition(problem: ConstantProblem): Preconditioned {
-  const { n, m, wbar, goal, samples } = problem;
+  const { n, m, wbar, goal, rooms, samples } = problem;
   const S = factorOf(problem);
   const transposed = Float64Array.from(S, (_, at) => S[(at % n) * n + Math.floor(at / n)]!);
   const times = (a: Float64Array, b: Float64Array, columns: number): Float64Array => {
@@ -45,7 +45,14 @@ export function precondition(problem: ConstantProblem): Preconditioned {
     G: into(G, wbar.length),
   });
   return {
-    problem: { n, m, wbar, goal: times(transposed, goal, goal.length / n), samples: samples.map(transform) },
+    problem: {
+      n,
+      m,
+      wbar,
+      goal: times(transposed, goal, goal.length / n),
+      rooms: rooms.map((c) => times(transposed, c, 1)),
+      samples: samples.map(transform),
+    },
     original: (W) => times(times(S, W, n), transposed, n),
   };
 }

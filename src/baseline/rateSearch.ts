@@ -11,6 +11,8 @@ import { type GoalPoint, goalPrograms } from "./goalProgram.js";
 export interface RateRequest {
   readonly window: number;
   readonly authorityLimit: number;
+  /** Largest R sqrt(c^T W c) over the problem's rooms. */
+  readonly roomLimit: number;
   /** A given rate, 1/s; null: searched. */
   readonly rate: number | null;
   /** A rate near which the best is expected; null: none. */
@@ -23,6 +25,8 @@ export interface Attempt extends GainedMetric {
   readonly authority: number;
   /** False when no metric at this rate meets the authority limit: W is then the one of least authority. */
   readonly isWithinLimit: boolean;
+  /** Largest R sqrt(c^T W c) over the rooms; above the limit when no metric at this rate meets it: W then leaves most room. */
+  readonly room: number;
   /** Relative distance of margin (or authority) to the least at this rate; null when not proved. */
   readonly gap: number | null;
 }
@@ -39,6 +43,8 @@ export interface RateSearch {
 export const RATE_SLACK = 0.01;
 /** The authority is asked this much below its limit. */
 export const AUTHORITY_SLACK = 0.01;
+/** A start is inside the room by this share. */
+const ROOM_SLACK = 0.98;
 const STEP = 0.6;
 const MOST_STEPS = 16;
 const REFINEMENTS = 2;
@@ -65,15 +71,19 @@ export function searchRate(problem: ConstantProblem, request: RateRequest): Rate
   descend(attempt, request, fastest.rate);
   for (let i = 0; i < REFINEMENTS && attempts.length > 0; i++) {
     const sorted = [...attempts].sort((a, b) => a.rate - b.rate);
-    const at = sorted.indexOf(bestOf(sorted));
+    const at = sorted.indexOf(bestOf(sorted, request.roomLimit));
     const neighbours = [sorted[at + 1], sorted[at - 1]].filter((other) => other !== undefined);
     for (const other of neighbours) attempt(Math.sqrt(sorted[at]!.rate * other.rate));
   }
-  return { best: attempts.length === 0 ? null : bestOf(attempts), fastest: fastest.rate, slowest: possible.slowest };
+  return {
+    best: attempts.length === 0 ? null : bestOf(attempts, request.roomLimit),
+    fastest: fastest.rate,
+    slowest: possible.slowest,
+  };
 }
 
 /** Geometric steps downwards, until three in a row are worse than the best. */
-function descend(attempt: (rate: number) => Attempt | null, { near }: RateRequest, fastest: number): void {
+function descend(attempt: (rate: number) => Attempt | null, { near, roomLimit }: RateRequest, fastest: number): void {
   const top = (0.97 * fastest) / (1 + RATE_SLACK);
   const first = near === null ? top : Math.min(top, near / STEP);
   const made: Attempt[] = [];
@@ -82,7 +92,7 @@ function descend(attempt: (rate: number) => Attempt | null, { near }: RateReques
     const next = attempt(first * STEP ** i);
     if (next === null) continue;
     made.push(next);
-    worse = bestOf(made) === next ? 0 : worse + 1;
+    worse = bestOf(made, roomLimit) === next ? 0 : worse + 1;
   }
 }
 
@@ -107,7 +117,7 @@ function gain(problem: ConstantProblem, W: Float64Array, rate: number): number {
 
 function attemptAt(
   problem: ConstantProblem,
-  { window, authorityLimit }: RateRequest,
+  { window, authorityLimit, roomLimit }: RateRequest,
   rate: number,
   start: GainedMetric,
 ): Attempt | null {
@@ -117,16 +127,25 @@ function attemptAt(
   const inside = programs.leastAuthority(programs.start(start), 0.9 * limit);
   if (inside === null) return null;
   const made = ({ W, rho, gap }: GoalPoint, isWithinLimit: boolean): Attempt => {
-    const { s, e, w } = measure(problem, W);
-    const margin = omega * s * Math.sqrt(w);
-    return { W, rho, rate, margin, authority: (omega * s * rho * Math.sqrt(e)) / 2, isWithinLimit, gap };
+    const { s, e, w, v } = measure(problem, W);
+    const [margin, room] = [omega * s * Math.sqrt(w), omega * s * Math.sqrt(v)];
+    return { W, rho, rate, margin, authority: (omega * s * rho * Math.sqrt(e)) / 2, isWithinLimit, room, gap };
   };
-  const best = programs.leastMargin(inside, limit);
+  const isRoomy = ({ W }: GoalPoint): boolean => {
+    const { s, v } = measure(problem, W);
+    return omega * s * Math.sqrt(v) < ROOM_SLACK * roomLimit;
+  };
+  const roomy = isRoomy(inside) ? inside : programs.leastRoom(inside, limit);
+  if (roomy === null) return made(inside, false);
+  if (!isRoomy(roomy)) return made(roomy, true);
+  const best = programs.leastMargin(roomy, limit, roomLimit / omega);
   return best === null ? made(inside, false) : made(best, true);
 }
 
-function bestOf(attempts: readonly Attempt[]): Attempt {
+function bestOf(attempts: readonly Attempt[], roomLimit: number): Attempt {
   const within = attempts.filter((attempt) => attempt.isWithinLimit);
-  if (within.length > 0) return within.reduce((a, b) => (b.margin < a.margin ? b : a));
+  const roomy = within.filter(({ room }) => room <= roomLimit);
+  if (roomy.length > 0) return roomy.reduce((a, b) => (b.margin < a.margin ? b : a));
+  if (within.length > 0) return within.reduce((a, b) => (b.room < a.room ? b : a));
   return attempts.reduce((a, b) => (b.authority < a.authority ? b : a));
 }

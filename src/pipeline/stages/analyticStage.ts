@@ -59,7 +59,7 @@ interface Bounds {
 }
 
 function bestConstant(plant: Plant, model: ControlAffineModel, bounds: Bounds): MetricArtifact {
-  const { goal, authorityLimit, rate } = plant.settings;
+  const { goal, authorityLimit, roomLimit, rate } = plant.settings;
   const dimension = model.active.length;
   const points = scanPoints(dimension, FIRST_STATES);
   const states = Array.from({ length: points.length / dimension }, (_, i) =>
@@ -69,6 +69,8 @@ function bestConstant(plant: Plant, model: ControlAffineModel, bounds: Bounds): 
     ...bounds,
     authorityLimit: AUTHORITY_SHARE * authorityLimit,
     goalStates: goal.kind === "state" ? [goal.state] : [...plant.symmetry.rotation!.position],
+    roomLimit,
+    roomStates: model.active,
     rate,
     rounds: CUT_ROUNDS,
   };
