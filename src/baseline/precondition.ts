@@ -58,6 +58,7 @@ export function precondition(problem: ConstantProblem): Preconditioned {
 }
 
 function factorOf({ n, m, samples }: ConstantProblem): Float64Array {
+  if (m === 0) return identity(n);
   const K = mean(samples.flatMap(({ jacobians }) => jacobians));
   const B = mean(samples.map((sample) => sample.B));
   const S = new Float64Array(n * n);
