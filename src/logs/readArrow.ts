@@ -1,13 +1,14 @@
 /** Arrow IPC, file or stream, by apache-arrow: any number type, nulls as missing values (NaN), run labels of any type. */
 import { readFile } from "node:fs/promises";
-import { DataType, type Table, tableFromIPC, type Vector } from "apache-arrow";
+import { DataType, type Table, type Vector } from "apache-arrow";
+import { arrowTable } from "./arrowTable.js";
 import { LogError } from "./logError.js";
 import { type LogTable, requireColumns, runLabel, type WantedColumns } from "./logTable.js";
 
 export async function readArrow(file: string, wanted: WantedColumns): Promise<LogTable> {
   let table: Table;
   try {
-    table = tableFromIPC(await readFile(file));
+    table = arrowTable(await readFile(file));
   } catch (error) {
     const isMissing = (error as NodeJS.ErrnoException).code === "ENOENT";
     const reason = isMissing
@@ -22,12 +23,21 @@ export async function readArrow(file: string, wanted: WantedColumns): Promise<Lo
     table.schema.fields.map((field) => field.name),
     wanted,
   );
-  return {
-    file,
-    rows,
-    columns: new Map(wanted.numbers.map((name) => [name, numbers(file, name, table.getChild(name)!, rows)])),
-    runs: wanted.run === null ? null : labels(file, wanted.run, table.getChild(wanted.run)!, rows),
-  };
+  try {
+    return {
+      file,
+      rows,
+      columns: new Map(wanted.numbers.map((name) => [name, numbers(file, name, table.getChild(name)!, rows)])),
+      runs: wanted.run === null ? null : labels(file, wanted.run, table.getChild(wanted.run)!, rows),
+    };
+  } catch (error) {
+    if (error instanceof LogError) throw error;
+    throw new LogError(
+      file,
+      null,
+      `holds values that cannot be read (${String((error as Error).message)}); write it again`,
+    );
+  }
 }
 
 function numbers(file: string, name: string, vector: Vector, rows: number): Float64Array {

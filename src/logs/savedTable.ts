@@ -8,11 +8,11 @@ import {
   Schema,
   Struct,
   Table,
-  tableFromIPC,
   tableToIPC,
   Utf8,
   vectorFromArray,
 } from "apache-arrow";
+import { arrowTable } from "./arrowTable.js";
 import { LogError } from "./logError.js";
 
 export interface SavedColumn {
@@ -55,7 +55,7 @@ export function writeTable(
 export function readSavedTable(path: string): Map<string, Float64Array | readonly string[]> {
   let table: Table;
   try {
-    table = tableFromIPC(readFileSync(path));
+    table = arrowTable(readFileSync(path));
   } catch {
     throw new LogError(path, null, "is not a whole table; run the stage that makes it again");
   }
