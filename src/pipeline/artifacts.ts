@@ -5,6 +5,7 @@ import type { ControlAffineModel, ResidualFile } from "../model/controlAffine.js
 import { fittedModel } from "../model/fittedModel.js";
 import type { DualMetricFile } from "../nets/dualMetric.js";
 import type { Plant } from "../plant/plant.js";
+import type { TermSlopes } from "../residual/lipschitz.js";
 import type { ResidualCurve } from "../residual/residualCurves.js";
 import type { RunFolder } from "./runFolder.js";
 import { splitFromColumns } from "./samplesTable.js";
@@ -66,6 +67,8 @@ export interface FitFile {
     readonly rmseFitted: number;
   }[];
   readonly curves: readonly ResidualCurve[];
+  /** How steep each fitted term can be (residual/lipschitz.ts), in the order of the plant's unknown terms. */
+  readonly slopes: readonly TermSlopes[];
 }
 
 export interface BoundFile {

@@ -240,7 +240,7 @@ function cautionsOf(plant: Plant, intake: IntakeFile, fit: FitFile): string[] {
       : []),
     ...(fit.status === "noBetterThanPrior" && plant.unknowns.length > 0
       ? [
-          "The fit found nothing better than the prior: look at the unknown terms, the states that they may depend on, and the logs.",
+          "The fit found nothing better than what it started from: look at the unknown terms, the states that they may depend on, and the logs.",
         ]
       : []),
     "The margin covers tracking alone: errors of localisation, map and timing are to be added by the planner.",

@@ -33,12 +33,13 @@ export interface FitStep {
 
 export interface FittedResidual {
   /**
-   * improved: better than the prior on the validation runs. noBetterThanPrior: no step was, and the terms are zero; look
-   * at the unknown terms and their states in the plant file, or at the logs. nothingUnknown: the plant declares no term.
+   * improved: better on the validation runs than where it started, the prior or an earlier residual. noBetterThanPrior: no
+   * step was, and the terms are as they started; look at the unknown terms and their states in the plant file, or at the
+   * logs. nothingUnknown: the plant declares no term.
    */
   readonly status: "improved" | "noBetterThanPrior" | "nothingUnknown";
   readonly residual: ResidualFile;
-  /** Step 0 is the prior. */
+  /** Step 0 is the prior, or the earlier residual. */
   readonly history: readonly FitStep[];
   /** Step whose weights are kept. */
   readonly bestStep: number;

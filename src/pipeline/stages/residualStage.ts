@@ -5,6 +5,7 @@ import { seededRandom } from "../../num/random.js";
 import { perSecond } from "../../plant/perSecond.js";
 import { plantScaling } from "../../plant/scaling.js";
 import { fitResidual } from "../../residual/fitResidual.js";
+import { termSlopes } from "../../residual/lipschitz.js";
 import { residualCurves } from "../../residual/residualCurves.js";
 import { windowedError } from "../../residual/windowedError.js";
 import { FILES, type FitFile, readSplit } from "../artifacts.js";
@@ -48,6 +49,7 @@ export const residualStage: Stage = {
         return { name, unit: perSecond(unit.name), rmsePrior, rmseFitted };
       }),
       curves: residualCurves(plant, fitted.residual, split.fit),
+      slopes: fitted.residual.terms.map(termSlopes),
     };
     folder.writeJson(FILES.residual, fitted.residual);
     folder.writeJson(FILES.fit, saved);
