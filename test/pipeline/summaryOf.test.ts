@@ -30,6 +30,7 @@ const FIT: FitFile = {
   window: 0.5,
   channels: [],
   curves: [],
+  slopes: [],
 };
 const BOUND: BoundFile = {
   confidence: 0.9,
